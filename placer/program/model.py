@@ -1,0 +1,165 @@
+"""A program as frozen data: registers, wires, operations, scopes.
+
+What comes out of a reader is flat: gate definitions, broadcasts, loops and scopes are
+expanded, controlled gates are lowered to calls and plain gates, cleanup by mirror is
+written out.  Nothing here knows a device or a recipe.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from types import MappingProxyType
+from typing import Literal, NewType
+
+from placer.errors import Place
+
+WireId = NewType("WireId", int)
+
+Start = Literal["zero", "unknown"]
+OperationKind = Literal[
+    "gate", "mcx", "mcz", "mcp", "and", "measure", "reset", "barrier"
+]
+CALL_KINDS: tuple[str, ...] = ("mcx", "mcz", "mcp", "and")
+
+# Plain gates that an operation of kind "gate" may name: wires, parameters.
+# Angles are radians in the OpenQASM 3 convention (stdgates.inc); u(theta, phi, lambda).
+PLAIN_GATES: Mapping[str, tuple[int, int]] = MappingProxyType(
+    {
+        "id": (1, 0),
+        "x": (1, 0),
+        "y": (1, 0),
+        "z": (1, 0),
+        "h": (1, 0),
+        "s": (1, 0),
+        "sdg": (1, 0),
+        "t": (1, 0),
+        "tdg": (1, 0),
+        "sx": (1, 0),
+        "sxdg": (1, 0),
+        "rx": (1, 1),
+        "ry": (1, 1),
+        "rz": (1, 1),
+        "p": (1, 1),
+        "u": (1, 3),
+        "cx": (2, 0),
+        "cy": (2, 0),
+        "cz": (2, 0),
+        "ch": (2, 0),
+        "cp": (2, 1),
+        "crx": (2, 1),
+        "cry": (2, 1),
+        "crz": (2, 1),
+        "swap": (2, 0),
+        "rzz": (2, 1),
+        "rxx": (2, 1),
+    }
+)
+
+
+@dataclass(frozen=True, slots=True)
+class Register:
+    """A named group of wires.
+
+    `start` says what the wires hold before the first operation.  `workspace` marks
+    scratch that starts and ends in |0> (a claim that the reader has verified);
+    such wires occupy a site only from their first to their last operation.
+    `lendable` is False where the program forbids lending.  `pins` holds the site of
+    each wire where the source names physical qubits, else `None`.
+    """
+
+    name: str
+    width: int
+    is_single: bool
+    start: Start
+    workspace: bool
+    lendable: bool
+    first: WireId
+    place: Place
+    pins: tuple[int, ...] | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Operation:
+    """One step of the flat program.
+
+    Calls (`mcx`, `mcz`, `mcp`, `and`) have their controls first and the target last in
+    `wires`; there are at least two controls.  `and` computes the product into a target
+    in |0>, and with `inverse` takes it away again.  `mcp` has its angle in `params`.
+    A gate has its name from PLAIN_GATES.  `bit` is the classical bit of a measurement,
+    as written in the source (`c[3]`).  `scope` is the number of the innermost scope,
+    -1 outside of all.  `part` says which part of that scope the step belongs to.
+    """
+
+    index: int
+    kind: OperationKind
+    name: str
+    wires: tuple[WireId, ...]
+    params: tuple[float, ...] = ()
+    inverse: bool = False
+    bit: str | None = None
+    place: Place = Place("")
+    scope: int = -1
+    part: Literal["", "compute", "body", "cleanup"] = ""
+    annotations: tuple[str, ...] = ()
+
+    @property
+    def is_call(self) -> bool:
+        """Whether recipes compete for this step."""
+        return self.kind in CALL_KINDS
+
+    @property
+    def controls(self) -> int:
+        """Number of controls of a call."""
+        return len(self.wires) - 1
+
+
+@dataclass(frozen=True, slots=True)
+class Scope:
+    """A compute part, its body and its cleanup, as ranges of operation indices.
+
+    `parent` is -1 for an outermost scope.  Ranges are half-open.
+    """
+
+    number: int
+    parent: int
+    name: str
+    compute: tuple[int, int]
+    body: tuple[int, int]
+    cleanup: tuple[int, int]
+    place: Place
+
+
+@dataclass(frozen=True, slots=True)
+class Program:
+    """A flat program.
+
+    `wire_names[w]` is the name in the source (`c[0]`, or `t` for a single qubit);
+    `bits` lists classical registers as (name, width; 0 = single bit).  `kept` are
+    pragmas to re-emit at the top of an output.  `assumed` says in words which start
+    states were assumed.
+    """
+
+    name: str
+    syntax: Literal["openqasm2", "openqasm3", "yaml"]
+    registers: tuple[Register, ...]
+    wire_names: tuple[str, ...]
+    operations: tuple[Operation, ...]
+    scopes: tuple[Scope, ...]
+    bits: tuple[tuple[str, int], ...]
+    kept: tuple[str, ...]
+    assumed: str
+    open_inputs: bool
+    text: str
+    path: str
+    hash: str
+    register_of: tuple[int, ...] = field(repr=False, default=())
+
+    def register_at(self, wire: int) -> Register:
+        """Return the register that a wire belongs to."""
+        return self.registers[self.register_of[wire]]
+
+    @property
+    def calls(self) -> tuple[Operation, ...]:
+        """The operations that recipes compete for, in program order."""
+        return tuple(op for op in self.operations if op.is_call)
