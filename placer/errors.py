@@ -66,7 +66,7 @@ class InputError(PlacerError):
         super().__init__("\n".join(str(fault) for fault in self.faults))
 
     @classmethod
-    def at(cls, place: Place, code: str, what: str, help: str = "") -> InputError:  # noqa: A002
+    def at(cls, place: Place, code: str, what: str, help: str = "") -> InputError:
         """Return an error with one fault."""
         return cls([Fault(place, code, what, help)])
 

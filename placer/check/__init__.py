@@ -1,1 +1,1 @@
-
+"""Judge a plan, independently of the planner."""

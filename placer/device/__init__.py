@@ -1,1 +1,1 @@
-
+"""Say what the hardware is."""

@@ -1,1 +1,1 @@
-
+"""Decide: recipes, workspace, lenders, sites, timing."""

@@ -1,1 +1,1 @@
-
+"""Say what is asked."""

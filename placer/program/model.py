@@ -16,6 +16,9 @@ from placer.errors import Place
 
 WireId = NewType("WireId", int)
 
+NOWHERE = Place("")
+"""The place of a step that no source line wrote."""
+
 Start = Literal["zero", "unknown"]
 OperationKind = Literal[
     "gate", "mcx", "mcz", "mcp", "and", "measure", "reset", "barrier"
@@ -98,7 +101,7 @@ class Operation:
     params: tuple[float, ...] = ()
     inverse: bool = False
     bit: str | None = None
-    place: Place = Place("")
+    place: Place = NOWHERE
     scope: int = -1
     part: Literal["", "compute", "body", "cleanup"] = ""
     annotations: tuple[str, ...] = ()

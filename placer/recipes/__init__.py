@@ -1,1 +1,1 @@
-
+"""Say how a call can be built."""

@@ -1,1 +1,1 @@
-
+"""Write what people and other tools read."""
