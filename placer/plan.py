@@ -1,0 +1,274 @@
+"""The answer: recipes, sites, leases, schedule, route, figures, verdict; JSON in and out.
+
+No algorithms.  All times are whole nanoseconds, all costs are -ln(fidelity) in units
+of 1e-12, all intervals are half-open.  What each figure means is defined in
+DEVELOPERS.md, 'How a plan is judged'.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+import hashlib
+import json
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, Literal
+
+from placer.device.model import Budget
+from placer.errors import InputError, Place
+
+if TYPE_CHECKING:
+    from collections.abc import Mapping
+
+FORMAT = 1
+Policy = Literal["clean", "borrowed", "level2", "none"]
+POLICIES: tuple[Policy, ...] = ("clean", "borrowed", "level2", "none")
+
+
+@dataclass(frozen=True, slots=True)
+class Lease:
+    """A slot's stay on a site over [start, end).
+
+    `lender` is the name of the idle wire whose site a borrowed slot uses; `None` for
+    clean slots and for a borrowed slot on a site that nothing else holds.
+    """
+
+    slot: int
+    site: int
+    kind: Literal["clean", "borrowed"]
+    start: int
+    end: int
+    lender: str | None
+
+
+@dataclass(frozen=True, slots=True)
+class Step:
+    """One operation of the program with its recipe and its planned time.
+
+    `lost` lists the other recipes that were considered, each with the reason.
+    """
+
+    index: int
+    kind: str
+    name: str
+    line: int
+    recipe: str
+    workspace: str
+    start: int
+    end: int
+    leases: tuple[Lease, ...]
+    lost: tuple[tuple[str, str], ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class Route:
+    """The included route: which swaps happen between which two-body gates.
+
+    Two-body gates are numbered in placed order.  `gaps[i]` holds runs (first, last),
+    both included, of the gates done before swap `i`; the last gap follows the last
+    swap.  `expected_swaps` is the mean over `held_out` routes with settings and seeds
+    that the search never used (-1 when none was run).
+    """
+
+    gaps: tuple[tuple[tuple[int, int], ...], ...]
+    swaps: tuple[tuple[int, int], ...]
+    held_out: int = 0
+    expected_swaps: float = -1.0
+
+
+@dataclass(frozen=True, slots=True)
+class Costs:
+    """Where the expected error comes from; whole numbers, see the module text."""
+
+    two_qubit: int = 0
+    one_qubit: int = 0
+    swaps: int = 0
+    decay: int = 0
+    measurement: int = 0
+    level2: int = 0
+    preparation: int = 0
+
+    @property
+    def total(self) -> int:
+        """The sum of all causes."""
+        return (
+            self.two_qubit
+            + self.one_qubit
+            + self.swaps
+            + self.decay
+            + self.measurement
+            + self.level2
+            + self.preparation
+        )
+
+
+@dataclass(frozen=True, slots=True)
+class Figures:
+    """What the included route does on the device; estimates, not promises.
+
+    `worst_share` is the largest part of min(T1, T2) that one value lives (for a stay
+    in level 2: of that level's lifetime), `worst_value` names it.
+    """
+
+    sites: int
+    swaps: int
+    time_ns: int
+    two_qubit_gates: int
+    one_qubit_gates: int
+    t_gates: int
+    measurements: int
+    level2_gates: int
+    costs: Costs
+    success: float
+    worst_share: float
+    worst_value: str
+
+
+@dataclass(frozen=True, slots=True)
+class Bound:
+    """How good the plan is.
+
+    `estimate` is the plan's placement cost, `least` a proven lower bound of the
+    placement cost over all plans of the problem, `by` says who proved it.  `proven`
+    is true when the two are equal.  `floor` bounds the expected error (figures) of
+    every plan from below, `floor_by` says how.
+    """
+
+    estimate: int
+    least: int | None
+    by: str
+    proven: bool
+    floor: int
+    floor_by: str
+
+    @property
+    def gap(self) -> float | None:
+        """(estimate - least) / estimate, `None` without a bound."""
+        if self.least is None:
+            return None
+        return (self.estimate - self.least) / self.estimate if self.estimate else 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class PolicyRow:
+    """What one fixed workspace choice applied everywhere would give."""
+
+    policy: str
+    possible: bool
+    reason: str
+    fits: bool
+    figures: Figures | None
+    estimate: int | None
+
+
+@dataclass(frozen=True, slots=True)
+class Limit:
+    """One limit of the budget against what the plan does, both in the unit named."""
+
+    name: str
+    value: float
+    limit: float | None
+    holds: bool
+    unit: str
+    about: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Verdict:
+    """Does it fit, in one sentence, with every limit and what limits most."""
+
+    fits: bool
+    sentence: str
+    limits: tuple[Limit, ...]
+    nearest: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Source:
+    """An input as it was read: its whole text travels with the plan."""
+
+    name: str
+    path: str
+    syntax: str
+    hash: str
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class Plan:
+    """A checked answer for one program on one device."""
+
+    version: str
+    program: Source
+    device: Source
+    calibrated: str
+    open_inputs: bool
+    assumed: str
+    budget: Budget
+    goal: str
+    only: tuple[str, ...]
+    seed: int
+    effort: str
+    wires: Mapping[str, int]
+    steps: tuple[Step, ...]
+    route: Route
+    figures: Figures
+    bound: Bound
+    policies: tuple[PolicyRow, ...]
+    verdict: Verdict
+    notes: tuple[str, ...] = ()
+
+    @property
+    def calls(self) -> tuple[Step, ...]:
+        """The steps that recipes competed for."""
+        return tuple(s for s in self.steps if s.kind in ("mcx", "mcz", "mcp", "and"))
+
+    @property
+    def hash(self) -> str:
+        """The sha256 of the plan's JSON text."""
+        return hashlib.sha256(to_json(self).encode()).hexdigest()
+
+
+def to_json(plan: Plan) -> str:
+    """Return the plan as JSON text, keys in a fixed order, ending in a newline."""
+    data = dataclasses.asdict(plan)
+    data["wires"] = dict(plan.wires)
+    figures = data["figures"]
+    figures["cost"] = plan.figures.costs.total
+    bound = data["bound"]
+    bound["gap"] = plan.bound.gap
+    steps = data.pop("steps")
+    calls = [s for s in steps if s["kind"] in ("mcx", "mcz", "mcp", "and")]
+    others = [[s["index"], s["start"], s["end"]] for s in steps if s not in calls]
+    head = {"format": FORMAT, **data}
+    head["calls"] = calls
+    head["others"] = others
+    return json.dumps(head, indent=1, ensure_ascii=False) + "\n"
+
+
+def from_json(text: str, path: str = "plan") -> dict[str, Any]:
+    """Return the raw data of a plan file, without believing any of it.
+
+    Raises
+    ------
+    InputError
+        If the text is not a JSON object of this format.
+    """
+    place = Place(path)
+    try:
+        data = json.loads(text)
+    except (ValueError, RecursionError) as error:
+        line = getattr(error, "lineno", 0)
+        raise InputError.at(
+            Place(path, line),
+            "not-json",
+            f"this is not JSON ({error})",
+            "give the file that 'placer plan --plan FILE' wrote",
+        ) from error
+    if not isinstance(data, dict) or data.get("format") != FORMAT:
+        raise InputError.at(
+            place,
+            "not-a-plan",
+            f"this is not a plan of format {FORMAT}",
+            "give the file that 'placer plan --plan FILE' wrote",
+        )
+    return data
