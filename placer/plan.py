@@ -1,4 +1,4 @@
-"""The answer: recipes, sites, leases, schedule, route, figures, verdict; JSON in and out.
+"""The answer: recipes, sites, leases, schedule, route, figures, verdict; JSON in, out.
 
 No algorithms.  All times are whole nanoseconds, all costs are -ln(fidelity) in units
 of 1e-12, all intervals are half-open.  What each figure means is defined in
