@@ -10,7 +10,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from functools import lru_cache
 
-from placer.recipes import borrowed, clean, level2, noworkspace, toffoli
+from placer.recipes import borrowed, clean, conditional, level2, noworkspace, toffoli
 from placer.recipes.circuit import Built, Circuit, Op, Recipe, Workspace
 from placer.recipes.draft import Job, Made, tidy
 
@@ -153,6 +153,33 @@ _ENTRIES: tuple[_Entry, ...] = (
         measured=True,
     ),
     _entry(
+        "clean-one",
+        "conditionally clean ladder on one clean wire",
+        "clean",
+        _ALL,
+        (4, None),
+        conditional.one,
+        f"{_KHATTAR}; {_RELATIVE}",
+    ),
+    _entry(
+        "clean-one-log",
+        "conditionally clean trees on one clean wire",
+        "clean",
+        _X,
+        (9, None),
+        conditional.one_log,
+        f"variant of {_KHATTAR}, rebuilt independently; {_RELATIVE}",
+    ),
+    _entry(
+        "clean-two-log",
+        "conditionally clean trees on two clean wires",
+        "clean",
+        _ALL,
+        (7, None),
+        conditional.two_log,
+        f"{_KHATTAR}; {_RELATIVE}",
+    ),
+    _entry(
         "borrowed-v-chain",
         "V-chain on borrowed wires",
         "borrowed",
@@ -169,6 +196,42 @@ _ENTRIES: tuple[_Entry, ...] = (
         (4, None),
         borrowed.halves,
         f"{_BARENCO}, Lemma 7.3; {_RELATIVE}",
+    ),
+    _entry(
+        "borrowed-one",
+        "toggle-detected ladder on one borrowed wire",
+        "borrowed",
+        _X,
+        (4, None),
+        conditional.one_toggled,
+        f"{_KHATTAR}; {_RELATIVE}",
+    ),
+    _entry(
+        "borrowed-one-log",
+        "toggle-detected trees on one borrowed wire",
+        "borrowed",
+        _X,
+        (8, None),
+        conditional.one_log_toggled,
+        f"variant of {_KHATTAR}, rebuilt independently; {_RELATIVE}",
+    ),
+    _entry(
+        "none-gray",
+        "phases of all parities in Gray order",
+        "none",
+        _ALL,
+        (3, 6),
+        noworkspace.gray,
+        f"{_BARENCO}, Lemma 7.1",
+    ),
+    _entry(
+        "none-quadratic",
+        "controlled roots around products of the lower controls",
+        "none",
+        _ALL,
+        (3, None),
+        noworkspace.quadratic,
+        f"{_BARENCO}, Lemma 7.5; {_RELATIVE}",
     ),
     _entry(
         "none-linear",

@@ -8,11 +8,13 @@ arXiv 1303.3557; da Silva and Park 2022, arXiv 2203.11882.
 from __future__ import annotations
 
 import math
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 
+from placer.recipes.borrowed import add_product
 from placer.recipes.circuit import Op
-from placer.recipes.draft import Draft, Job, Made, both, join
-from placer.recipes.toffoli import controlled_phase
+from placer.recipes.conditional import add_product_toggled
+from placer.recipes.draft import Draft, Job, Made, both, join, phase
+from placer.recipes.toffoli import controlled_phase, relative_three
 
 
 def root(angle: float, control: int, target: int) -> Draft:
@@ -31,6 +33,74 @@ def framed(job: Job, inner: Draft) -> Made:
 def full_angle(job: Job) -> float:
     """Return the phase that |1...1> gets in the phase frame."""
     return job.angle if job.kind == "mcp" else math.pi
+
+
+def quadratic(job: Job) -> Made:
+    """Return the recursion on the highest control: 2k-1 controlled roots.
+
+    The product of the lower controls is added to the highest one between two opposite
+    half-angle phases; what is left is the same call with one control fewer and half
+    the angle.  The target and the controls already done are lent to the products.
+    """
+    angle, pieces = full_angle(job), list[Draft]()
+    for top in range(job.controls - 1, 0, -1):
+        angle /= 2
+        idle = [job.target, *range(top + 1, job.controls)]
+        add = _add_below(top, idle)
+        half = _half_root(angle, top, job.target)
+        pieces += [half, add, half.inverse(), add.inverse()]
+    pieces.append(root(angle, 0, job.target))
+    return framed(job, join(pieces))
+
+
+def _half_root(angle: float, control: int, target: int) -> Draft:
+    """Return a controlled phase without its part on the target alone.
+
+    It comes in opposite pairs, between which the target rests; that part cancels.
+    """
+    ops = (
+        *phase(angle / 2, control),
+        Op("cx", (control, target)),
+        *phase(-angle / 2, target),
+        Op("cx", (control, target)),
+    )
+    return Draft((Op("cp", (control, target), (angle,)),), ops)
+
+
+def _add_below(top: int, idle: Sequence[int]) -> Draft:
+    """Return c_top ^= product of all lower controls, up to phases."""
+    lower = range(top)
+    if top == 1:
+        return both("cx", 0, 1)
+    if top == 3:
+        written = add_product(lower, idle, top)
+        return Draft(written.coarse, relative_three(0, 1, 2, top).fine)
+    if top - 2 <= len(idle):
+        return add_product(lower, idle, top)
+    return add_product_toggled(lower, idle[0], top)
+
+
+def gray(job: Job) -> Made:
+    """Return the phases of all parities in Gray order: 2^(k+1) - 2 CNOT.
+
+    |1...1> gets the angle when a parity of j wires gets angle / 2^k, with the sign
+    (-1)^(j+1).
+    """
+    whole = full_angle(job)
+    step = whole / 2**job.controls
+    ops: list[Op] = []
+    for wire in range(job.controls, -1, -1):
+        held = 0
+        for count in range(1, 2**wire + 1):
+            ones = 1 + held.bit_count()
+            ops += phase(step if ones % 2 else -step, wire)
+            if wire == 0:
+                break
+            turned = min((count & -count).bit_length() - 1, wire - 1)
+            held ^= 1 << turned
+            ops.append(Op("cx", (turned, wire)))
+    coarse = (Op("mcp", tuple(range(job.controls + 1)), (whole,)),)
+    return framed(job, Draft(coarse, tuple(ops)))
 
 
 def linear(job: Job) -> Made:

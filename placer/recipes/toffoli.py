@@ -79,6 +79,26 @@ def relative(first: int, second: int, target: int) -> Draft:
     )
 
 
+def relative_three(first: int, second: int, third: int, target: int) -> Draft:
+    """Return target ^= product of three wires up to phases: 6 CNOT, 8 T, no workspace.
+
+    Fig. 4 of Maslov 2016, from memory; the phases were checked by simulation.
+    """
+    a, b, c, t = first, second, third, target
+    edge = gates(("h", t), ("t", t), ("cx", c, t), ("tdg", t), ("h", t))
+    middle = gates(
+        ("cx", a, t),
+        ("t", t),
+        ("cx", b, t),
+        ("tdg", t),
+        ("cx", a, t),
+        ("t", t),
+        ("cx", b, t),
+        ("tdg", t),
+    )
+    return Draft((Op("mcx", (a, b, c, t)),), (*edge, *middle, *edge))
+
+
 def side_in(changing: int, steady: int, target: int) -> Draft:
     """Return the first half of a relative-phase Toffoli: 2 CNOT, 2 T.
 
@@ -191,15 +211,19 @@ def toggle(job: Job, before: Draft, changing: int, steady: int, flip: Draft) -> 
     `before` prepares the factor `steady` without looking at `changing`; `flip` adds
     the other factor to `changing`.  Whatever `changing` held cancels.
     """
-    back, target = before.inverse(), job.target
     if job.kind == "and":
-        top = side_in(changing, steady, target)
-        pieces = [before, top, back, flip, before, top.inverse(), back, flip.inverse()]
-        whole = join([*pieces, Draft((), (Op("sdg", (target,)),))])
+        top = side_in(changing, steady, job.target)
+        whole = twice(before, top, flip) + Draft((), (Op("sdg", (job.target,)),))
         return whole.inverse() if job.inverse else whole
-    top, frame = shared_top(changing, steady, target), open_frame(job)
-    pieces = [before, top, back, flip, before, top.inverse(), back, flip.inverse()]
-    return join([frame, *pieces, frame])
+    frame = open_frame(job)
+    top = shared_top(changing, steady, job.target)
+    return join((frame, twice(before, top, flip), frame))
+
+
+def twice(before: Draft, top: Draft, flip: Draft) -> Draft:
+    """Return `top` done within `before` twice, the second time mirrored and flipped."""
+    back = before.inverse()
+    return join((before, top, back, flip, before, top.inverse(), back, flip.inverse()))
 
 
 def textbook(job: Job) -> Made:
