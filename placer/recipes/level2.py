@@ -37,19 +37,32 @@ def lift(node: Node) -> list[Op]:
     transpositions 01 (left) and 12 (right), done twice in turn, are a commutator that
     carries 0 -> 1 -> 2 -> 0 iff both are active and do nothing otherwise.
     """
-    ops = [op for child in node.children for op in lift(child)]
+    return [op for each in _from_below(node) for op in _join_children(each)]
+
+
+def _from_below(top: Node) -> list[Node]:
+    """Return all nodes, children before parents."""
+    order, waiting = list[Node](), [top]
+    while waiting:
+        node = waiting.pop()
+        order.append(node)
+        waiting.extend(node.children)
+    return order[::-1]
+
+
+def _join_children(node: Node) -> list[Op]:
+    wire = node.wire
     if len(node.children) == 1:
-        (child,) = node.children
-        ops.append(_step(child, node.wire, "x12", enters=(node.wire,)))
-    elif node.children:
-        left, right = node.children
-        ops += [
-            _step(left, node.wire, "x01"),
-            _step(right, node.wire, "x12", enters=(node.wire,)),
-            _step(left, node.wire, "x01"),
-            _step(right, node.wire, "x12"),
-        ]
-    return ops
+        return [_step(node.children[0], wire, "x12", enters=(wire,))]
+    if not node.children:
+        return []
+    left, right = node.children
+    return [
+        _step(left, wire, "x01"),
+        _step(right, wire, "x12", enters=(wire,)),
+        _step(left, wire, "x01"),
+        _step(right, wire, "x12"),
+    ]
 
 
 def _step(
@@ -60,10 +73,9 @@ def _step(
     )
 
 
-def inner_wires(node: Node) -> list[int]:
+def inner_wires(top: Node) -> list[int]:
     """Return the wires that step up to |2>."""
-    below = [wire for child in node.children for wire in inner_wires(child)]
-    return [*below, node.wire] if node.children else below
+    return [node.wire for node in _from_below(top) if node.children]
 
 
 def _made(job: Job, top: Node) -> Made:
@@ -93,8 +105,8 @@ def tree(job: Job) -> Made:
 
 
 def _heap(at: int, count: int) -> Node:
-    """Return the subtree of a heap, filled from the left."""
-    below = [child for child in (2 * at + 1, 2 * at + 2) if child < count]
+    """Return the subtree of a heap; the fuller child is needed last."""
+    below = [child for child in (2 * at + 2, 2 * at + 1) if child < count]
     return Node(at, tuple(_heap(child, count) for child in below))
 
 
