@@ -221,12 +221,12 @@ def _check_level2(faults: Faults, lattice: Lattice, stated: Stated) -> None:
             if site in offered and _is_lacking(stated, site, key)
         ]
         if lacking:
-            what = "lifetime (t1_us)" if name == "t1_us" else name
+            what = "lifetime, t1_us" if name == "t1_us" else name
             faults.append(
                 Fault(
                     stated.level2_place,
                     "missing-level2",
-                    f"{_sites_words(lacking)} offers level 2 without a level-2 {what}",
+                    f"level 2 of {_sites_words(lacking)} has no {what}",
                     f"give {name} under sites.level2",
                 )
             )
