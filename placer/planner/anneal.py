@@ -8,18 +8,20 @@ together, so that a valid placement stays valid.  Compiled by numba.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numba
 import numpy as np
 
-from placer.planner.placement import Instance, Placement, local_sites
+from placer.planner.placement import Instance, Placement, duration, local_sites
 from placer.planner.placement import schedule as reschedule
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from numpy.typing import NDArray
+
+    from placer.planner.profile import Profile
 
 HARD = 1e15
 
@@ -76,8 +78,6 @@ def flow_of(instance: Instance, placement: Placement, move_scale: float) -> Flow
 
 
 def _ends(instance: Instance, placement: Placement) -> list[int]:
-    from placer.planner.placement import duration
-
     return [
         placement.starts[step]
         + duration(
@@ -98,14 +98,14 @@ def _add_alone(
     tables = instance.tables
     for local, site in enumerate(where):
         for counts, row in (
-            (profile.ones, tables.one),  # type: ignore[attr-defined]
-            (profile.tees, tables.tee),  # type: ignore[attr-defined]
-            (profile.reads, tables.read),  # type: ignore[attr-defined]
-            (profile.wipes, tables.wipe),  # type: ignore[attr-defined]
+            (profile.ones, tables.one),
+            (profile.tees, tables.tee),
+            (profile.reads, tables.read),
+            (profile.wipes, tables.wipe),
         ):
             if counts[local]:
                 alone[site] += float(counts[local]) * np.asarray(row)
-        time = profile.level2_ns[local]  # type: ignore[attr-defined]
+        time = profile.level2_ns[local]
         if time:
             rate2 = np.asarray(tables.rate2, dtype=np.float64)
             extra = np.maximum(rate2 - np.asarray(tables.rate), 0.0) * float(time)
@@ -173,29 +173,45 @@ def anneal(
     identity = np.arange(count, dtype=np.int64)
     if len(active) == 0:
         return identity
-    return _anneal(
-        identity,
+    rows = (
         flow.offsets,
         flow.others,
         flow.weights,
         flow.kinds,
         flow.flipped,
-        flow.prices,
         flow.alone,
-        active,
-        np.array(usable, dtype=np.int64),
-        neighbours[0],
-        neighbours[1],
-        moves,
-        seed,
-        heat,
     )
+    links = (*neighbours, np.array(usable, dtype=np.int64))
+    result: NDArray[np.int64] = _anneal(
+        identity, rows, flow.prices, links, active, moves, seed, heat
+    )
+    return result
 
 
 @numba.njit(cache=True)
-def _token_cost(
-    t, site, place, offsets, others, weights, kinds, flipped, prices, alone
-):  # type: ignore[no-untyped-def]
+def _next(state: Any) -> Any:
+    # xorshift64*: small, seedable, the same on every platform.
+    x = state[0]
+    x ^= x >> np.uint64(12)
+    x ^= x << np.uint64(25)
+    x ^= x >> np.uint64(27)
+    state[0] = x
+    return x * np.uint64(2685821657736338717)
+
+
+@numba.njit(cache=True)
+def _below(state: Any, limit: Any) -> Any:
+    return np.int64((_next(state) >> np.uint64(33)) % np.uint64(limit))
+
+
+@numba.njit(cache=True)
+def _unit(state: Any) -> Any:
+    return np.float64(_next(state) >> np.uint64(11)) / 9007199254740992.0
+
+
+@numba.njit(cache=True)
+def _token_cost(t: Any, site: Any, place: Any, rows: Any, prices: Any) -> Any:
+    offsets, others, weights, kinds, flipped, alone = rows
     total = alone[t, site]
     for k in range(offsets[t], offsets[t + 1]):
         other = place[others[k]]
@@ -207,75 +223,73 @@ def _token_cost(
 
 
 @numba.njit(cache=True)
-def _anneal(  # type: ignore[no-untyped-def]
-    place,
-    offsets,
-    others,
-    weights,
-    kinds,
-    flipped,
-    prices,
-    alone,
-    active,
-    usable,
-    link_offsets,
-    link_sites,
-    moves,
-    seed,
-    heat,
-):
-    np.random.seed(seed)
-    count = place.shape[0]
-    token_at = np.empty(count, dtype=np.int64)
-    for t in range(count):
+def _change(a: Any, b: Any, place: Any, rows: Any, prices: Any) -> Any:
+    """Exchange the sites of two tokens and return the change of cost."""
+    source, target = place[a], place[b]
+    before = _token_cost(a, source, place, rows, prices)
+    before += _token_cost(b, target, place, rows, prices)
+    place[a] = target
+    place[b] = source
+    after = _token_cost(a, target, place, rows, prices)
+    return after + _token_cost(b, source, place, rows, prices) - before
+
+
+@numba.njit(cache=True)
+def _propose(state: Any, place: Any, rows: Any, links: Any, active: Any) -> Any:
+    """Return a token and a site: mostly one beside a token that it meets."""
+    offsets, others = rows[0], rows[1]
+    link_offsets, link_sites, usable = links
+    a = active[_below(state, active.shape[0])]
+    degree = offsets[a + 1] - offsets[a]
+    if degree > 0 and _unit(state) < 0.7:
+        near = place[others[offsets[a] + _below(state, degree)]]
+        count = link_offsets[near + 1] - link_offsets[near]
+        if count > 0:
+            return a, link_sites[link_offsets[near] + _below(state, count)]
+    return a, usable[_below(state, usable.shape[0])]
+
+
+@numba.njit(cache=True)
+def _anneal(
+    place: Any,
+    rows: Any,
+    prices: Any,
+    links: Any,
+    active: Any,
+    moves: Any,
+    seed: Any,
+    heat: Any,
+) -> Any:
+    state = np.array([np.uint64(seed) * np.uint64(7919) + np.uint64(88172645463325252)])
+    token_at = np.empty_like(place)
+    for t in range(place.shape[0]):
         token_at[place[t]] = t
+    # Measure the size of changes first, then set the temperatures.
+    hot = 0.0
+    samples = 200
+    for _ in range(samples):
+        a, target = _propose(state, place, rows, links, active)
+        b = token_at[target]
+        if a != b:
+            change = abs(_change(a, b, place, rows, prices))
+            _change(a, b, place, rows, prices)
+            if change < 1e13:
+                hot += change / samples
+    hot *= 0.5 * heat
     best = place.copy()
     current = 0.0
     best_cost = 0.0
-    hot = 0.0
-    cold = 0.0
-    samples = min(200, moves)
-    for move in range(samples + moves):
-        a = active[np.random.randint(active.shape[0])]
-        target = usable[np.random.randint(usable.shape[0])]
-        degree = offsets[a + 1] - offsets[a]
-        if degree > 0 and np.random.random() < 0.7:
-            near = place[others[offsets[a] + np.random.randint(degree)]]
-            links = link_offsets[near + 1] - link_offsets[near]
-            if links > 0:
-                target = link_sites[link_offsets[near] + np.random.randint(links)]
+    for step in range(moves):
+        a, target = _propose(state, place, rows, links, active)
         b = token_at[target]
         if a == b:
             continue
         source = place[a]
-        before = _token_cost(
-            a, source, place, offsets, others, weights, kinds, flipped, prices, alone
-        ) + _token_cost(
-            b, target, place, offsets, others, weights, kinds, flipped, prices, alone
-        )
-        place[a] = target
-        place[b] = source
-        after = _token_cost(
-            a, target, place, offsets, others, weights, kinds, flipped, prices, alone
-        ) + _token_cost(
-            b, source, place, offsets, others, weights, kinds, flipped, prices, alone
-        )
-        change = after - before
-        if move < samples:
-            # Measure the size of changes first, then set the temperatures.
-            if change < 1e13:
-                hot += abs(change) / samples
-            place[a] = source
-            place[b] = target
-            continue
-        if move == samples:
-            hot = max(hot, 1e-9) * heat * 0.5
-            cold = max(hot * 1e-3, 1e-9)
-        share = (move - samples) / moves
-        temperature = hot * (cold / max(hot, 1e-30)) ** share if hot > 0 else 0.0
+        change = _change(a, b, place, rows, prices)
+        temperature = hot * 1e-3 ** (step / moves)
         accept = change <= 0
         if not accept and temperature > 0:
-            accept = np.random.random() < np.exp(-change / temperature)
+            accept = _unit(state) < np.exp(-change / temperature)
         if accept:
             token_at[target] = a
             token_at[source] = b
@@ -287,6 +301,19 @@ def _anneal(  # type: ignore[no-untyped-def]
             place[a] = source
             place[b] = target
     return best
+
+
+def neighbours_of(instance: Instance) -> tuple[NDArray[np.int64], NDArray[np.int64]]:
+    """Return the usable links of the device as rows (offsets, sites)."""
+    device = instance.problem.device
+    rows: list[list[int]] = [[] for _ in device.sites]
+    for link in device.links:
+        if device.is_usable(link):
+            rows[link.a].append(link.b)
+            rows[link.b].append(link.a)
+    offsets = np.cumsum([0, *(len(row) for row in rows)], dtype=np.int64)
+    sites = np.array([p for row in rows for p in sorted(row)], dtype=np.int64)
+    return offsets, sites
 
 
 def move(instance: Instance, placement: Placement, to: Sequence[int]) -> Placement:
