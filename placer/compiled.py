@@ -1,0 +1,27 @@
+"""The one way to compile a numeric loop: results never depend on the cache.
+
+Machine code is kept on disk where that is allowed, so that a second run starts fast;
+in a place without a writable cache it is compiled anew in every process.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any, ParamSpec, TypeVar, cast
+
+import numba
+
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
+Parameters = ParamSpec("Parameters")
+Result = TypeVar("Result")
+
+
+def compiled(function: Callable[Parameters, Result]) -> Callable[Parameters, Result]:
+    """Return the function compiled; strict floating point, wrapping integers."""
+    fast: Any
+    try:
+        fast = numba.njit(cache=True)(function)
+    except RuntimeError:  # nowhere to keep the machine code
+        fast = numba.njit(function)
+    return cast("Callable[Parameters, Result]", fast)
