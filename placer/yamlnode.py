@@ -72,7 +72,7 @@ class Node:
         if self.is_null:
             return "empty"
         if self.kind != "scalar":
-            return f"a {self.kind}"
+            return "a mapping" if self.is_mapping else "a list"
         text = repr(self.value)
         return text if len(text) <= _SHOWN else text[: _SHOWN - 4] + "...'"
 
@@ -203,18 +203,18 @@ class Node:
                 faults, "out-of-range", f"{self.label} {self.value} is too large"
             )
             return None
-        limits = [
-            (low is not None and number < low, f"at least {low}"),
-            (above is not None and number <= above, f"above {above}"),
-            (high is not None and number > high, f"at most {high}"),
-            (below is not None and number >= below, f"below {below}"),
-        ]
-        for is_broken, words in limits:
-            if is_broken:
+        limits = (
+            ("at least", low, number.__lt__),
+            ("above", above, number.__le__),
+            ("at most", high, number.__gt__),
+            ("below", below, number.__ge__),
+        )
+        for words, limit, is_beyond in limits:
+            if limit is not None and is_beyond(float(limit)):
                 self.fault(
                     faults,
                     "out-of-range",
-                    f"{self.label} is {self.value}, must be {words}",
+                    f"{self.label} is {self.value}, must be {words} {limit:g}",
                 )
                 return None
         return number

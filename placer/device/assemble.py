@@ -46,7 +46,8 @@ def build_sites(faults: Faults, lattice: Lattice, stated: Stated) -> tuple[Site,
         own = stated.of_site.get(number, {})
         figures = {**stated.site_default, **own}
         if "t1_us" in own or "t2_us" in own:
-            check_lifetimes(faults, figures, f"site {number}")
+            blamed = "t2_us" if "t2_us" in own else "t1_us"
+            check_lifetimes(faults, figures, f"site {number}", blamed=blamed)
         site = _site(
             number,
             figures,

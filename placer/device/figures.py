@@ -97,8 +97,10 @@ def read_time(faults: Faults, node: Node) -> Tick | None:
     return None if value is None else ticks_up(value)
 
 
-def check_lifetimes(faults: Faults, figures: Figures, who: str) -> None:
-    """Refuse T2 > 2 T1, which no noise allows."""
+def check_lifetimes(
+    faults: Faults, figures: Figures, who: str, *, blamed: str = "t2_us"
+) -> None:
+    """Refuse T2 > 2 T1, which no noise allows; `blamed` is the figure pointed at."""
     pair = [figures[key] for key in ("t1_us", "t2_us") if key in figures]
     if len(pair) < 2 or not all(figure.is_good for figure in pair):
         return
@@ -108,7 +110,7 @@ def check_lifetimes(faults: Faults, figures: Figures, who: str) -> None:
     shown = "none (no decay)" if t2 is None else f"{t2:g}"
     faults.append(
         Fault(
-            figures["t2_us"].place,
+            figures[blamed].place,
             "impossible-lifetime",
             f"T2 of {who} is {shown}, more than twice its T1 of {t1:g} us",
             f"decay of the excited state alone limits T2 to {2.0 * t1:g} us",

@@ -69,6 +69,11 @@ def find_device(name_or_path: str) -> Device:
     ------
     InputError
         If there is no such device, the file cannot be read, or it has faults.
+
+    Examples
+    --------
+    >>> find_device("slate-16").lattice
+    'grid of 4 x 4'
     """
     text = name_or_path.strip()
     shipped = shipped_devices()

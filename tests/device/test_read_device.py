@@ -150,6 +150,9 @@ def test_twice_t1_is_the_last_t2_allowed() -> None:
         read_device(TOY.replace("t2_us: 60", "t2_us: 160"), "t").sites[0].t2_us == 160
     )
     assert faults_of(TOY.replace("t2_us: 60", "t2_us: 160.001"))
+    # The fault is where the last figure was set.
+    text = TOY + "site_overrides:\n  2: {t1_us: 20}\n"
+    assert faults_of(text)[0].startswith("toy.yaml:22:14: error[impossible-lifetime]")
     # A bad T1 is one fault, not two.
     assert len(faults_of(TOY.replace("t1_us: 80", "t1_us: -80"))) == 1
 
