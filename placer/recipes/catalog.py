@@ -234,6 +234,15 @@ _ENTRIES: tuple[_Entry, ...] = (
         f"variant of {_KHATTAR}, rebuilt independently; {_RELATIVE}",
     ),
     _entry(
+        "borrowed-roots",
+        "controlled roots around V-chains on borrowed wires",
+        "borrowed",
+        ("mcp",),
+        (5, 64),
+        noworkspace.lent,
+        f"{_BARENCO}, Lemmas 7.2 and 7.5; {_RELATIVE}",
+    ),
+    _entry(
         "none-gray",
         "phases of all parities in Gray order",
         "none",

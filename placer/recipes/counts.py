@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from placer.recipes.circuit import Built, Circuit, Op
 
 _CLIFFORD = frozenset({"id", "x", "y", "z", "h", "s", "sdg", "sx", "sxdg"})
+_KEPT_WHOLE = ("mcx", "mcz", "mcp")
 _T = ("t", "tdg")
 
 
@@ -20,8 +21,9 @@ _T = ("t", "tdg")
 class Counts:
     """Sizes of a recipe.
 
-    `toffoli`, `toffoli_depth` and `coarse_depth` belong to the coarse circuit, where a
-    call that stays one operation counts no Toffoli; all else belongs to the fine one.
+    `toffoli`, `kept_whole` (multi-controlled operations that stay one at that level, of
+    any size), `toffoli_depth` and `coarse_depth` belong to the coarse circuit; all else
+    belongs to the fine one.
     `two_qubit` counts unconditional cx and cz, `two_qubit_conditional` those behind a
     measurement.  `rotations` counts one-qubit gates outside Clifford+T.  Depths are of
     the earliest schedule, in which only the named gates (or all) take one slot each.
@@ -33,6 +35,7 @@ class Counts:
     """
 
     toffoli: int
+    kept_whole: int
     toffoli_depth: int
     coarse_depth: int
     two_qubit: int
@@ -72,6 +75,7 @@ def count(built: Built) -> Counts:
     total, longest, window = _residence(built)
     return Counts(
         toffoli=sum(op.name == "ccx" for op in coarse.ops),
+        kept_whole=sum(op.name in _KEPT_WHOLE for op in coarse.ops),
         toffoli_depth=depth(coarse.ops, _is_toffoli),
         coarse_depth=depth(coarse.ops),
         two_qubit=len(pairs) - conditional,
