@@ -40,18 +40,21 @@ def quadratic(job: Job) -> Made:
 
     The product of the lower controls is added to the highest one between two opposite
     half-angle phases; what is left is the same call with one control fewer and half
-    the angle.  The target and the controls already done are lent to the products.
+    the angle.  The controls already done are lent to the products, and the target last:
+    what the two products of a level do on wires other than the target meets and
+    cancels.
     """
     return framed(job, _recursion(job, []))
 
 
 def lent(job: Job) -> Made:
-    """Return the recursion of `quadratic` with k-4 borrowed wires.
+    """Return the recursion of `quadratic` with k-3 borrowed wires.
 
-    They make every product a V-chain: fewer CNOT, still of quadratic size.  For X and Z
+    They make every product a V-chain clear of the target, so that half of each pair of
+    products cancels: far fewer CNOT, still of quadratic size.  For X and Z
     the V-chain alone is better.
     """
-    count = job.controls - 4
+    count = job.controls - 3
     wires = range(job.first_slot, job.first_slot + count)
     return Made(_recursion(job, wires), same("borrowed", count))
 
@@ -60,7 +63,7 @@ def _recursion(job: Job, borrowed: Sequence[int]) -> Draft:
     angle, pieces = full_angle(job), list[Draft]()
     for top in range(job.controls - 1, 0, -1):
         angle /= 2
-        idle = [*borrowed, job.target, *range(top + 1, job.controls)]
+        idle = [*borrowed, *range(top + 1, job.controls), job.target]
         add = _add_below(top, idle)
         half = _half_root(angle, top, job.target)
         pieces += [half, add, half.inverse(), add.inverse()]

@@ -331,12 +331,16 @@ def test_quadratic_without_workspace(controls: int, toffoli: int) -> None:
 
 
 def test_borrowed_wires_shorten_the_recursion() -> None:
-    """This code: k-4 borrowed wires, 4(m-2) Toffolis for each product of m wires."""
+    """This code: k-3 borrowed wires, 4m-6 Toffolis a pair of products of m controls.
+
+    A pair is 2 * 4(m-2) Toffolis, of which the chain that ends the first and the one
+    that begins the second, 2m-5 each, meet and cancel.
+    """
     for controls in (5, 6, 8, 12):
         found = sizes("borrowed-roots", controls, "mcp")
-        assert found.borrowed == controls - 4
-        products = 1 + sum(4 * (m - 2) for m in range(3, controls))
-        assert found.toffoli == 2 * products
+        assert found.borrowed == controls - 3
+        pairs = [4 * m - 6 for m in range(2, controls)]
+        assert found.toffoli == sum(pairs) == 2 * (controls - 2) ** 2
         assert found.two_qubit < sizes("none-quadratic", controls, "mcp").two_qubit
 
 
