@@ -70,7 +70,7 @@ class Page:
     def heading(self, text: str) -> None:
         """Add an empty line and a heading."""
         self.line()
-        self.line(text, "title")
+        self.paragraph(text, shade="title")
 
     def table(
         self,

@@ -1,0 +1,391 @@
+"""The command line: parse, call, print, exit.
+
+stdout carries the result, stderr everything else.  Exit status: 0 a plan that fits;
+1 a plan that does not fit or a failed check; 2 bad input; 3 no plan found in the work
+allowed; 70 a bug; 130 interrupted.  The solver is loaded only by the commands that
+need it.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+import errno
+import json
+import math
+import os
+import shlex
+import shutil
+import sys
+import traceback
+from pathlib import Path
+from typing import TYPE_CHECKING, Any, NoReturn, cast
+
+import click
+
+from placer.errors import (
+    CheckFailed,
+    Fault,
+    InputError,
+    InternalError,
+    NoPlan,
+    OutOfTime,
+    Place,
+    PlacerError,
+)
+from placer.plan import POLICIES, to_json
+from placer.report.outputs import STDOUT, check_targets, write_all
+from placer.report.progress import Progress
+from placer.report.sorts import sort_of
+from placer.report.words import WIDTH
+from placer.version import VERSION
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from placer.device.model import Budget, Device
+    from placer.plan import Plan
+    from placer.program.model import Program
+    from placer.report.qasm import Gates
+
+WIDEST = 100
+INTERRUPTED = 130
+_SCHEMAS = ("device", "program", "plan")
+
+
+class Commands(click.Group):
+    """The group of commands; turns every error into its text and exit status."""
+
+    def invoke(self, ctx: click.Context) -> Any:
+        """Run a command, and exit with the status that its error owns."""
+        try:
+            return super().invoke(ctx)
+        except PlacerError as error:
+            click.echo(_error_text(error), err=True)
+            ctx.exit(error.exit_code)
+        except KeyboardInterrupt:
+            click.echo("\nplacer: interrupted; nothing was written", err=True)
+            ctx.exit(INTERRUPTED)
+        except (click.ClickException, click.exceptions.Exit, click.Abort):
+            raise
+        except Exception as error:
+            if isinstance(error, OSError) and error.errno == errno.EPIPE:
+                raise
+            click.echo(_bug_text(error), err=True)
+            ctx.exit(InternalError.exit_code)
+
+
+@click.group(
+    cls=Commands,
+    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 80},
+)
+@click.version_option(VERSION, "--version", message="placer %(version)s")
+def main() -> None:
+    """Choose recipes, workspace, lenders, sites and timing for a quantum program.
+
+    Exit status: 0 a plan that fits; 1 a plan that does not fit, or a failed check;
+    2 bad input; 3 no plan found in the work allowed; 70 a bug.
+    """
+
+
+_quiet = click.option("-q", "--quiet", is_flag=True, help="No progress on stderr.")
+_json = click.option("--json", "as_json", is_flag=True, help="Print JSON on stdout.")
+
+
+def _finite(
+    ctx: click.Context, parameter: click.Parameter, value: float | None
+) -> float | None:
+    if value is not None and not math.isfinite(value):
+        raise click.BadParameter(f"{value} is not a number", ctx, parameter)
+    return value
+
+
+@main.command()
+@click.argument("program")
+@click.option("-d", "--device", required=True, help="A shipped device or a YAML file.")
+@click.option(
+    "--budget",
+    "share",
+    metavar="SHARE",
+    type=click.FloatRange(0, 1000, min_open=True),
+    callback=_finite,
+    help="Part of T1 or T2 that one value may live, such as 0.5.",
+)
+@click.option(
+    "--least-success",
+    metavar="PROBABILITY",
+    type=click.FloatRange(0, 1, min_open=True),
+    callback=_finite,
+    help="Least expected success of the whole program.",
+)
+@click.option(
+    "--most-sites", type=click.IntRange(1), metavar="N", help="Most sites to touch."
+)
+@click.option(
+    "--effort",
+    type=click.Choice(["quick", "normal", "deep"]),
+    default="normal",
+    show_default=True,
+    help="How much work the search may do.",
+)
+@click.option(
+    "--seed",
+    type=click.IntRange(0, 2**31 - 1),
+    default=0,
+    show_default=True,
+    help="Seed of the search; the same seed gives the same plan.",
+)
+@click.option(
+    "--only",
+    type=click.Choice(POLICIES),
+    multiple=True,
+    help="Allow only this kind of workspace (repeatable).",
+)
+@click.option(
+    "--open-inputs",
+    is_flag=True,
+    help="Take every wire that is not declared scratch as unknown at the start.",
+)
+@click.option("--plan", "plan_file", metavar="FILE", help="Write the plan as JSON.")
+@click.option(
+    "--qasm", "qasm_file", metavar="FILE", help="Write placed OpenQASM 3, unrouted."
+)
+@click.option(
+    "--gates",
+    type=click.Choice(["toffoli", "clifford-t"]),
+    default="toffoli",
+    show_default=True,
+    help="Gate level of the placed OpenQASM.",
+)
+@_json
+@_quiet
+def plan(
+    program: str,
+    device: str,
+    *,
+    share: float | None,
+    least_success: float | None,
+    most_sites: int | None,
+    plan_file: str | None,
+    qasm_file: str | None,
+    gates: str,
+    as_json: bool,
+    quiet: bool,
+    **options: Any,
+) -> None:
+    """Plan PROGRAM for one device: the verdict, and what it rests on.
+
+    PROGRAM is an OpenQASM 2 or 3 file, a program YAML file, or the name of a demo
+    program.  A FILE of '-' is standard output.
+    """
+    targets = [name for name in (plan_file, qasm_file) if name is not None]
+    _one_on_stdout(targets, as_json=as_json)
+    check_targets(targets, (program, device))
+    source, chosen = _read_both(program, device, open_inputs=options["open_inputs"])
+    budget = _budget(chosen, share, least_success, most_sites)
+    with Progress(sys.stderr, is_quiet=quiet) as progress:
+        # Loaded late: importing the solver takes longer than most commands run.
+        from placer.api import plan as find_plan
+
+        found = find_plan(source, chosen, budget=budget, progress=progress, **options)
+    texts: dict[str, str] = {}
+    if plan_file is not None:
+        texts[plan_file] = to_json(found)
+    if qasm_file is not None:
+        from placer.report.qasm import placed_qasm
+
+        level = cast("Gates", gates)
+        texts[qasm_file] = placed_qasm(found, source, chosen, gates=level)
+    _put(texts, found, as_json=as_json, quiet=quiet)
+    if not found.verdict.fits:
+        _exit(NoPlan.exit_code)
+
+
+def _put(texts: dict[str, str], found: Plan, *, as_json: bool, quiet: bool) -> None:
+    """Write the files, then print the one result that stdout is for."""
+    from placer.report.text import plan_text
+
+    checked = "checked: verified rule by rule from its own text before it was shown"
+    on_stdout = to_json(found) if as_json else texts.pop(STDOUT, None)
+    shown = plan_text(found, checked=checked, **_look(sys.stdout))
+    write_all(texts)
+    if on_stdout is None:
+        click.echo(shown, nl=False)
+        return
+    click.echo(on_stdout, nl=False)
+    if not quiet:
+        click.echo(plan_text(found, checked=checked), nl=False, err=True)
+
+
+def _one_on_stdout(targets: Sequence[str], *, as_json: bool) -> None:
+    if targets.count(STDOUT) + as_json > 1:
+        raise click.UsageError(
+            "standard output has room for one result: only one of --json, --plan -, "
+            "--qasm - can use it"
+        )
+
+
+def _budget(
+    device: Device,
+    share: float | None,
+    least_success: float | None,
+    most_sites: int | None,
+) -> Budget:
+    """Return the device's budget with what the command line says instead."""
+    given = {"share": share, "least_success": least_success, "most_sites": most_sites}
+    changes: dict[str, Any] = {k: v for k, v in given.items() if v is not None}
+    return dataclasses.replace(device.budget, **changes)
+
+
+def _read_both(
+    program: str, device: str, *, open_inputs: bool
+) -> tuple[Program, Device]:
+    """Read both inputs, and report the faults of both in one pass."""
+    faults: list[Fault] = []
+    source = chosen = None
+    try:
+        chosen = _load_device(device)
+    except InputError as error:
+        faults += error.faults
+    try:
+        source = _load_program(program, open_inputs=open_inputs)
+    except InputError as error:
+        faults += error.faults
+    if source is None or chosen is None:
+        raise InputError(faults)
+    return source, chosen
+
+
+@main.command()
+@click.argument("plan_file", metavar="PLAN")
+@_json
+def check(plan_file: str, *, as_json: bool) -> None:
+    """Verify PLAN from the file alone: every rule, every figure."""
+    from placer.check.verify import check_plan
+    from placer.report.show import check_data, check_text
+
+    result = check_plan(_read_text(plan_file), plan_file)
+    if as_json:
+        _print_json(check_data(result, plan_file))
+    else:
+        click.echo(check_text(result, plan_file, **_look(sys.stdout)), nl=False)
+    if not result.ok:
+        _exit(CheckFailed.exit_code)
+
+
+@main.command()
+@click.argument("name", metavar="FILE")
+@click.option(
+    "--open-inputs",
+    is_flag=True,
+    help="Take every wire that is not declared scratch as unknown at the start.",
+)
+@_json
+def show(name: str, *, open_inputs: bool, as_json: bool) -> None:
+    """Show what a device or a program contains.
+
+    FILE is a device or program file, or the name of a shipped device or demo program.
+    """
+    from placer.report import show as shown
+
+    is_device = sort_of(name) == "device"
+    if is_device:
+        device = _load_device(name)
+        if as_json:
+            _print_json(shown.device_data(device))
+        else:
+            click.echo(shown.device_text(device, **_look(sys.stdout)), nl=False)
+        return
+    program = _load_program(name, open_inputs=open_inputs)
+    if as_json:
+        _print_json(shown.program_data(program))
+    else:
+        click.echo(shown.program_text(program, **_look(sys.stdout)), nl=False)
+
+
+@main.command()
+@click.argument("what", type=click.Choice(_SCHEMAS))
+def schema(what: str) -> None:
+    """Print the JSON Schema of a device file, a program file or a plan."""
+    from placer.report.schema import schema_text
+
+    click.echo(schema_text(what), nl=False)
+
+
+# ------------------------------------------------------------------------- helpers
+
+
+def _load_program(name: str, *, open_inputs: bool) -> Program:
+    from placer.program.read import load_program
+
+    return load_program(name, open_inputs=open_inputs)
+
+
+def _load_device(name: str) -> Device:
+    from placer.device.read import find_device
+
+    return find_device(name)
+
+
+def _read_text(path: str) -> str:
+    try:
+        if path == STDOUT:
+            return sys.stdin.buffer.read().decode("utf-8")
+        return Path(path).read_text(encoding="utf-8")
+    except OSError as error:
+        raise InputError.at(
+            Place(path), "not-read", f"'{path}' cannot be read ({error.strerror})"
+        ) from error
+    except UnicodeDecodeError as error:
+        raise InputError.at(
+            Place(path), "not-text", f"'{path}' is not UTF-8 text", "give a plan file"
+        ) from error
+
+
+def _print_json(data: dict[str, Any]) -> None:
+    click.echo(json.dumps(data, indent=1, ensure_ascii=False))
+
+
+def _look(stream: Any) -> dict[str, Any]:
+    """Return width and colour: what the terminal has, or fixed when there is none."""
+    if not stream.isatty():
+        return {"width": WIDTH, "colour": False}
+    columns = shutil.get_terminal_size((WIDTH, 24)).columns
+    return {"width": min(columns, WIDEST), "colour": "NO_COLOR" not in os.environ}
+
+
+def _exit(status: int) -> NoReturn:
+    click.get_current_context().exit(status)
+
+
+def _error_text(error: PlacerError) -> str:
+    if isinstance(error, InputError):
+        return str(error)
+    if isinstance(error, NoPlan):
+        return f"placer: no plan is possible: {error}"
+    if isinstance(error, OutOfTime):
+        return (
+            f"placer: no plan was found in the work allowed: {error}\n"
+            "  help: try --effort deep, or relax a limit"
+        )
+    if isinstance(error, InternalError):
+        return _bug_text(error)
+    return f"placer: {error}"
+
+
+def _bug_text(error: Exception) -> str:
+    """Return what a report of a bug needs: the place, and how to see it again."""
+    if os.environ.get("PLACER_TRACE"):
+        return "".join(traceback.format_exception(error)).rstrip()
+    frames = traceback.extract_tb(error.__traceback__)
+    place = f" ({Path(frames[-1].filename).name}:{frames[-1].lineno})" if frames else ""
+    command = shlex.join(["placer", *sys.argv[1:]])
+    return (
+        f"placer {VERSION}: internal error: {type(error).__name__}: {error}{place}\n"
+        "  this is a bug of placer, not of your input; please report it with the\n"
+        "  input files and this command, which shows it again in full:\n"
+        f"  PLACER_TRACE=1 {command}"
+    )
+
+
+if __name__ == "__main__":
+    main()
