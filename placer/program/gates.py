@@ -1,0 +1,392 @@
+"""Gates by name: the tables, gates of the user's own, and modifiers.
+
+A definition is checked once, when it is declared; its terms are worked out for each
+list of parameters that occurs.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, field
+
+from placer.errors import Fault, InputError, Place, did_you_mean
+from placer.program.gatetable import ALWAYS, FIXED, GATES, GLOBAL_PHASE, BuiltIn
+from placer.program.loops import MOST_OPERATIONS, loop_values
+from placer.program.lowering import Raw, lower
+from placer.program.names import Broken, Constant, Entity, Names, Silent
+from placer.program.syntax import (
+    Barrier,
+    Expression,
+    GateCall,
+    GateDefinition,
+    Loop,
+    Modifier,
+    Statement,
+    Unreadable,
+)
+from placer.program.terms import Term, Terms, controlled, inverse, moved, power
+
+DEEPEST_GATE = 150
+
+
+@dataclass(frozen=True, slots=True)
+class OwnGate:
+    """A gate of the user's own; `depth` counts definitions that call each other."""
+
+    number: int
+    depth: int
+    definition: GateDefinition
+
+    @property
+    def params(self) -> int:
+        """How many parameters it takes."""
+        return len(self.definition.params)
+
+    @property
+    def wires(self) -> int:
+        """How many wires it acts on."""
+        return len(self.definition.wires)
+
+
+Change = tuple[str, int]
+"""A modifier with its value: ('ctrl', 2), ('negctrl', 1), ('inv', 1), ('pow', -3)."""
+
+
+@dataclass(slots=True)
+class Gates:
+    """The gates in sight; `names` holds the constants that bodies may use."""
+
+    names: Names
+    has_library: bool = False
+    own: dict[str, OwnGate | None] = field(default_factory=dict)
+    notes: list[str] = field(default_factory=list)
+    count: int = 0
+    _terms: dict[tuple[int, tuple[float, ...]], Terms] = field(default_factory=dict)
+    _raws: dict[tuple[object, ...], tuple[Raw, ...]] = field(default_factory=dict)
+
+    def find(self, name: str, place: Place) -> BuiltIn | OwnGate:
+        """Return the gate of a name."""
+        if name in self.own:
+            gate = self.own[name]
+            if gate is None:
+                raise Silent
+            return gate
+        if name == "gphase" and self.names.dialect == "openqasm3":
+            return GLOBAL_PHASE
+        if name in ALWAYS:
+            return ALWAYS[name]
+        if self.has_library and name in GATES:
+            return GATES[name]
+        self.own[name] = None
+        is_v2 = self.names.dialect == "openqasm2"
+        library = "qelib1.inc" if is_v2 else "stdgates.inc"
+        if name in GATES:
+            help = f'add include "{library}"; at the top'
+        else:
+            known = [word for word in self.own if word != name]
+            help = did_you_mean(name, sorted([*known, *ALWAYS, *GATES]))
+        raise InputError.at(
+            place, "undeclared", f"the gate '{name}' is not declared", help
+        )
+
+    def declare(self, definition: GateDefinition) -> None:
+        """Add a gate of the user's own, after a check of its body."""
+        name, place = definition.name, definition.place
+        if name in self.own and self.own[name] is not None:
+            gate = self.own[name]
+            line = gate.definition.place.line if gate is not None else 0
+            raise InputError.at(
+                place,
+                "declared-twice",
+                f"the gate '{name}' is declared already, in line {line}",
+            )
+        is_fixed = self.has_library and name in FIXED[self.names.dialect]
+        if is_fixed or name in ALWAYS or name == "gphase":
+            raise InputError.at(
+                place,
+                "declared-twice",
+                f"the gate '{name}' is one of the standard gates already",
+                "choose another name, or leave the definition out",
+            )
+        faults = list(self._faults(definition))
+        # Even a wrong gate is declared, so that its calls are not reported as well.
+        self.own[name] = None
+        if faults:
+            raise InputError(faults)
+        self.count += 1
+        self.own[name] = OwnGate(self.count, self._depth(definition), definition)
+        # Calls of a gate of the table that had this name must not be taken for it.
+        self._raws.clear()
+
+    def _depth(self, definition: GateDefinition) -> int:
+        """Return how deep definitions are nested below one, itself included."""
+        depth = 1
+        for call in _calls(definition.body):
+            gate = self.own.get(call.name)
+            if gate is not None:
+                depth = max(depth, gate.depth + 1)
+        if depth > DEEPEST_GATE:
+            raise InputError.at(
+                definition.place,
+                "too-deep",
+                f"the gate '{definition.name}' nests more than {DEEPEST_GATE} "
+                "definitions",
+            )
+        return depth
+
+    def changes(self, modifiers: Sequence[Modifier]) -> tuple[Change, ...]:
+        """Return the values of modifiers, in the order they are written."""
+        result: list[Change] = []
+        for modifier in modifiers:
+            value = 1
+            if modifier.value is not None:
+                value = self._count(modifier, modifier.value)
+            result.append((modifier.kind, value))
+            if modifier.kind == "negctrl" and value > 1:
+                note = f"negctrl({value}) was read as {value} nested negctrl"
+                if note not in self.notes:
+                    self.notes.append(note)
+        return tuple(result)
+
+    def _count(self, modifier: Modifier, expression: Expression) -> int:
+        if modifier.kind == "pow":
+            value = self.names.value(expression)
+            if isinstance(value, float) and not value.is_integer():
+                raise InputError.at(
+                    modifier.place,
+                    "unsupported",
+                    f"pow({value:g}) is not supported, only whole powers are",
+                    "write the root as a gate of its own",
+                )
+            return int(value)
+        count = self.names.whole(expression, f"the count of '{modifier.kind}'")
+        if count < 1:
+            raise InputError.at(
+                modifier.place,
+                "bad-count",
+                f"{modifier.kind}({count}) needs a count of at least 1",
+            )
+        return count
+
+    def check_call(
+        self, call: GateCall, gate: BuiltIn | OwnGate, changes: Sequence[Change]
+    ) -> None:
+        """Check the numbers of parameters and operands of a call."""
+        if len(call.params) != gate.params:
+            raise InputError.at(
+                call.place,
+                "parameter-count",
+                f"the gate '{call.name}' takes {gate.params} parameters, found "
+                f"{len(call.params)}",
+            )
+        added = sum(count for kind, count in changes if kind in ("ctrl", "negctrl"))
+        if len(call.operands) != gate.wires + added:
+            controls = f" and {added} controls" if added else ""
+            raise InputError.at(
+                call.place,
+                "operand-count",
+                f"the gate '{call.name}' acts on {gate.wires} qubits{controls}, found "
+                f"{len(call.operands)} operands",
+            )
+
+    def values(self, call: GateCall) -> tuple[float, ...]:
+        """Return the parameters of a call."""
+        result = []
+        for expression in call.params:
+            value = self.names.value(expression)
+            if abs(value) > 1e15:
+                raise InputError.at(
+                    expression[-1].place,
+                    "no-value",
+                    f"the angle {float(min(max(value, -1e300), 1e300)):g} is too large",
+                )
+            result.append(float(value))
+        return tuple(result)
+
+    def operations(self, call: GateCall) -> tuple[Raw, ...]:
+        """Return the operations of a call on local wires."""
+        gate = self.find(call.name, call.place)
+        changes = self.changes(call.modifiers)
+        self.check_call(call, gate, changes)
+        values = self.values(call)
+        key = (call.name, values, changes)
+        if key not in self._raws:
+            terms = self._changed(self._terms_of(gate, values, call), changes, call)
+            self._raws[key] = lower(terms)
+        return self._raws[key]
+
+    def _changed(
+        self, terms: Terms, changes: Sequence[Change], call: GateCall
+    ) -> Terms:
+        """Return terms under modifiers; the last one written acts first."""
+        for kind, value in reversed(changes):
+            if kind == "inv":
+                terms = inverse(terms)
+            elif kind == "pow":
+                _limit(len(terms) * abs(value), call)
+                terms = power(terms, value)
+            else:
+                _limit(len(terms) + 2 * value, call)
+                for _ in range(value):
+                    terms = controlled(terms, on_zero=kind == "negctrl")
+        return terms
+
+    def _terms_of(
+        self, gate: BuiltIn | OwnGate, values: tuple[float, ...], call: GateCall
+    ) -> Terms:
+        if isinstance(gate, BuiltIn):
+            return gate.terms(values)
+        key = (gate.number, values)
+        if key not in self._terms:
+            definition = gate.definition
+            saved = self.names.blocks
+            # A body sees its own parameters and what is global.
+            arguments: dict[str, tuple[Entity, Place]] = {
+                name: (Constant(value), definition.place)
+                for name, value in zip(definition.params, values, strict=True)
+            }
+            self.names.blocks = [saved[0], arguments]
+            wires = {name: number for number, name in enumerate(definition.wires)}
+            terms: list[Term] = []
+            try:
+                self._body(definition.body, wires, terms, call)
+            finally:
+                self.names.blocks = saved
+            self._terms[key] = tuple(terms)
+        return self._terms[key]
+
+    def _body(
+        self,
+        body: Sequence[Statement],
+        wires: dict[str, int],
+        terms: list[Term],
+        outer: GateCall,
+    ) -> None:
+        """Add the terms of the statements of a body.
+
+        A barrier only orders, and is left out inside of gates.
+        """
+        for statement in body:
+            if isinstance(statement, GateCall):
+                gate = self.find(statement.name, statement.place)
+                changes = self.changes(statement.modifiers)
+                self.check_call(statement, gate, changes)
+                inner = self._terms_of(gate, self.values(statement), statement)
+                inner = self._changed(inner, changes, statement)
+                operands = [wires[operand.name] for operand in statement.operands]
+                _limit(len(terms) + len(inner), outer)
+                terms.extend(moved(inner, operands))
+            elif isinstance(statement, Loop):
+                for value in loop_values(self.names, statement):
+                    constant = Constant(value)
+                    block: dict[str, tuple[Entity, Place]] = {
+                        statement.variable: (constant, statement.place)
+                    }
+                    self.names.blocks.append(block)
+                    try:
+                        self._body(statement.body, wires, terms, outer)
+                    finally:
+                        self.names.blocks.pop()
+
+    def _faults(self, definition: GateDefinition) -> Iterator[Fault]:
+        """Find what is wrong with a definition before anybody calls it."""
+        seen: set[str] = set()
+        for name in (*definition.params, *definition.wires):
+            if name in seen:
+                yield Fault(
+                    definition.place,
+                    "declared-twice",
+                    f"'{name}' stands twice among the arguments of '{definition.name}'",
+                )
+            seen.add(name)
+        yield from self._body_faults(
+            definition.body, definition, frozenset(definition.params)
+        )
+
+    def _body_faults(
+        self,
+        body: Sequence[Statement],
+        definition: GateDefinition,
+        values: frozenset[str],
+    ) -> Iterator[Fault]:
+        for statement in body:
+            if isinstance(statement, Unreadable):
+                yield from statement.faults
+            elif isinstance(statement, GateCall):
+                yield from self._call_faults(statement, definition, values)
+            elif isinstance(statement, Loop):
+                inner = values | {statement.variable}
+                yield from self._body_faults(statement.body, definition, inner)
+            elif not isinstance(statement, Barrier):
+                kind = type(statement).__name__
+                yield Fault(
+                    statement.place,
+                    "gate-body",
+                    f"{kind} cannot stand in the body of gate '{definition.name}'",
+                )
+            if isinstance(statement, GateCall | Barrier):
+                yield from _operand_faults(statement, definition)
+
+    def _call_faults(
+        self, call: GateCall, definition: GateDefinition, values: frozenset[str]
+    ) -> Iterator[Fault]:
+        if call.name == definition.name:
+            yield Fault(call.place, "recursion", f"the gate '{call.name}' calls itself")
+            return
+        # Names that are not known before the gate is called stand for the number 1.
+        self.names.blocks.append({name: (Broken(), call.place) for name in values})
+        try:
+            gate = self.find(call.name, call.place)
+            for expression in call.params:
+                for item in expression:
+                    if item.kind == "name" and item.word not in values:
+                        self.names.value((item,))
+            self.check_call(call, gate, self.changes(call.modifiers))
+        except InputError as error:
+            yield from error.faults
+        finally:
+            self.names.blocks.pop()
+
+
+def _operand_faults(
+    statement: GateCall | Barrier, definition: GateDefinition
+) -> Iterator[Fault]:
+    seen: set[str] = set()
+    for operand in statement.operands:
+        name = operand.name
+        if name.startswith("$"):
+            what = f"the physical qubit '{name}' cannot stand in a gate body"
+            yield Fault(operand.place, "gate-body", what)
+        elif name not in definition.wires:
+            yield Fault(
+                operand.place,
+                "undeclared",
+                f"'{name}' is no argument of gate '{definition.name}'",
+                did_you_mean(name, definition.wires),
+            )
+        elif operand.indices:
+            what = f"the argument '{name}' of a gate takes no index"
+            yield Fault(operand.place, "index", what)
+        elif name in seen:
+            what = f"'{name}' stands twice in one statement"
+            yield Fault(operand.place, "same-qubit", what)
+        seen.add(name)
+
+
+def _calls(body: Sequence[Statement]) -> Iterator[GateCall]:
+    """Yield the gate calls of a body, loops included."""
+    for statement in body:
+        if isinstance(statement, GateCall):
+            yield statement
+        elif isinstance(statement, Loop):
+            yield from _calls(statement.body)
+
+
+def _limit(count: int, call: GateCall) -> None:
+    """Refuse a gate that would become too many operations."""
+    if count > MOST_OPERATIONS:
+        raise InputError.at(
+            call.place,
+            "too-large",
+            f"the gate '{call.name}' expands to more than {MOST_OPERATIONS} operations",
+        )
