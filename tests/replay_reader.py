@@ -561,7 +561,8 @@ def _compare(
         run.state = {k: a / norm for k, a in run.state.items()}
         run.all()
     for wire in missing:
-        if first.constant(first.at(wire)) != 0 or wire in inputs:
+        is_input = wire in inputs and wire not in fresh
+        if first.constant(first.at(wire)) != 0 or is_input:
             return f"wire {wire} is not in the layout"
     busy = {placed.layout[w] for w in compared if w in placed.layout}
     touched = _reset_sites(placed)

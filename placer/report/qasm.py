@@ -143,7 +143,9 @@ def write_steps(
         _write_step(writer, step, sites, program, is_fine)
     top = ["OPENQASM 3.0;", *(f"// {_one_line(line)}" for line in head)]
     top.append('include "stdgates.inc";')
-    top += [_pragma(text) for text in program.kept]
+    # Pragmas of ours in a source describe that file, not this one.
+    kept = (_pragma(text) for text in program.kept)
+    top += [text for text in kept if not text.startswith("pragma placer.")]
     top.append(f"pragma placer.format {FORMAT}")
     inputs, zero = _staying(steps, sites, program)
     layout = " ".join(

@@ -49,10 +49,10 @@ def device_text(device: Device, *, width: int = WIDTH, colour: bool = False) -> 
     page = Page(width, colour=colour)
     working = [site for site in device.sites if site.in_service]
     links = [link for link in device.links if device.is_usable(link)]
-    page.line(
+    page.paragraph(
         f"{device.name}: {count(len(working), 'site')} in service, "
         f"{count(len(links), 'usable link')}, {device.lattice}",
-        "title",
+        shade="title",
     )
     page.paragraph(f"calibrated {device.calibrated or 'on a date not given'}")
     if device.note:
@@ -254,11 +254,11 @@ def _state(
 def program_text(program: Program, *, width: int = WIDTH, colour: bool = False) -> str:
     """Return what a program asks for, and what could be lent while it runs."""
     page = Page(width, colour=colour)
-    page.line(
+    page.paragraph(
         f"{program.name}: {count(len(program.wire_names), 'wire')}, "
         f"{count(len(program.operations), 'step')}, "
         f"{count(len(program.calls), 'call')}, {program.syntax}",
-        "title",
+        shade="title",
     )
     page.paragraph(f"assumed: {program.assumed}")
     page.heading("Registers")
