@@ -31,11 +31,12 @@ from placer.errors import (
     OutOfTime,
     Place,
     PlacerError,
+    did_you_mean,
 )
 from placer.plan import POLICIES, to_json
 from placer.report.outputs import STDOUT, check_targets, write_all
 from placer.report.progress import Progress
-from placer.report.sorts import sort_of
+from placer.report.sorts import demo_programs, sort_of
 from placer.report.words import WIDTH
 from placer.version import VERSION
 
@@ -315,9 +316,24 @@ def schema(what: str) -> None:
 
 
 def _load_program(name: str, *, open_inputs: bool) -> Program:
-    from placer.program.read import load_program
+    from placer.program.read import load_program, read_program
 
-    return load_program(name, open_inputs=open_inputs)
+    demos = demo_programs()
+    demo = demos.get(name)
+    if demo is None:
+        if name != STDOUT and not Path(name).suffix and not Path(name).exists():
+            near = did_you_mean(name, tuple(demos))
+            known = f"demo programs: {', '.join(demos) or 'none'}"
+            raise InputError.at(
+                Place(name or "(no name)"),
+                "not-found",
+                f"there is no file or demo program '{name}'",
+                f"{near} {known}".strip(),
+            )
+        return load_program(name, open_inputs=open_inputs)
+    # Named by its file alone: where the package is installed is nobody's business.
+    text = demo.read_text(encoding="utf-8")
+    return read_program(text, demo.name, open_inputs=open_inputs)
 
 
 def _load_device(name: str) -> Device:

@@ -61,6 +61,10 @@ class Fake:
             raise InputError.at(Place(name, 3, 1), "unknown-gate", "no gate 'foo'")
         return dataclasses.replace(program(), open_inputs=open_inputs)
 
+    def read_program(self, text, path, *, open_inputs):
+        named = f"{path}: {len(text)} signs"
+        return dataclasses.replace(program(), name=named, open_inputs=open_inputs)
+
 
 @pytest.fixture
 def fake(monkeypatch):
@@ -74,7 +78,11 @@ def fake(monkeypatch):
 
     module("placer.api", plan=made.plan)
     module("placer.check.verify", check_plan=made.check_plan)
-    module("placer.program.read", load_program=made.load_program)
+    module(
+        "placer.program.read",
+        load_program=made.load_program,
+        read_program=made.read_program,
+    )
     return made
 
 
@@ -316,6 +324,18 @@ def test_show_tells_files_apart(folder):
     result = run("show", "slate-61")
     assert result.exit_code == 2
     assert "did you mean 'slate-16'?" in result.stderr
+
+
+@pytest.mark.usefixtures("fake")
+def test_demo_programs_are_found_by_name(folder, monkeypatch):
+    demo = folder / "ripple.qasm"
+    demo.write_text("x" * 7)
+    for module in ("placer.cli", "placer.report.sorts"):
+        monkeypatch.setattr(f"{module}.demo_programs", lambda: {"ripple": demo})
+    assert run("show", "ripple").stdout.startswith("ripple.qasm: 7 signs: 8 wires")
+    assert "demo programs: ripple" in run("show", "riple").stderr
+    for words in (("show", "riple"), ("plan", "riple", "-d", "slate-16")):
+        assert "did you mean 'ripple'?" in run(*words).stderr
 
 
 @pytest.mark.parametrize("what", ["device", "program", "plan"])

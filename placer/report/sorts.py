@@ -18,11 +18,11 @@ _PROGRAM_KEY = re.compile(r"^(registers|steps|routines|program)\s*:", re.MULTILI
 _QASM = re.compile(r"^\s*(OPENQASM\b|include\b|qreg\b|qubit\b)", re.MULTILINE)
 
 
-def demo_programs() -> tuple[str, ...]:
-    """Return the names of the programs that travel with the package, sorted."""
+def demo_programs() -> dict[str, Path]:
+    """Return the programs that travel with the package, by name, sorted."""
     folder = Path(__file__).parent.parent / "demos"
     found = (p for p in folder.glob("*") if p.suffix in (".qasm", ".yaml", ".yml"))
-    return tuple(sorted(path.stem for path in found))
+    return {path.stem: path for path in sorted(found)}
 
 
 def sort_of(name: str) -> Sort:
@@ -68,7 +68,7 @@ def sort_of(name: str) -> Sort:
 
 
 def _by_name(name: str) -> Sort:
-    devices, demos = shipped_devices(), demo_programs()
+    devices, demos = shipped_devices(), tuple(demo_programs())
     if name in devices:
         return "device"
     if name in demos:
