@@ -13,14 +13,20 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from placer.planner.placement import Instance, Misfit, Placement
+from placer.planner.placement import (
+    Instance,
+    Misfit,
+    Placement,
+    duration,
+    local_sites,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from numpy.typing import NDArray
 
-    from placer.planner.profile import Profile
+    from placer.planner.profile import Mask, Profile
 
 HARD = 1e17
 """A price no real choice reaches; marks sites that cannot be used."""
@@ -55,7 +61,9 @@ class _State:
 
 
 @dataclass(frozen=True, slots=True)
-class _Offer:
+class Offer:
+    """What a recipe would cost at one step, and the slots and time it would take."""
+
     price: float
     recipe: int
     slots: tuple[int, ...]
@@ -82,6 +90,17 @@ def decode(
     return _Decoder(instance, taste, earlier).run(sites)
 
 
+def alternatives(
+    instance: Instance, placement: Placement, taste: Taste
+) -> list[list[Offer | None]]:
+    """Return per step what each open recipe would cost where the plan stands then.
+
+    `None` marks a recipe that finds no room.  The plan's own choices are committed
+    step after step, in program order.
+    """
+    return _Decoder(instance, taste, placement).follow(placement)
+
+
 class _Decoder:
     def __init__(
         self, instance: Instance, taste: Taste, earlier: Placement | None
@@ -103,8 +122,14 @@ class _Decoder:
         self.delay_price = mean_rate * max(1, len(held)) * taste.delay_scale
         self.next_use = _next_uses(instance)
         self.hurry, self.due = _hurry(instance, earlier)
+        self.floors: dict[Mask, float] = {}
 
-    def run(self, sites: Sequence[int]) -> Placement:
+    def _floor(self, mask: Mask) -> float:
+        if mask not in self.floors:
+            self.floors[mask] = float(self.tables.gate_floor(mask))
+        return self.floors[mask]
+
+    def _begin(self, sites: Sequence[int]) -> _State:
         instance = self.instance
         state = _State(
             [0] * len(instance.wires),
@@ -120,7 +145,12 @@ class _Decoder:
                 state.holder[sites[w]] = w
             elif wire.uses:
                 state.reserved[sites[w]] = w
-        for step in range(instance.steps):
+        return state
+
+    def run(self, sites: Sequence[int]) -> Placement:
+        """Place every step in program order."""
+        state = self._begin(sites)
+        for step in range(self.instance.steps):
             self._place_new_wires(state, step)
             self._commit(state, step, self._best(state, step))
         return Placement(
@@ -129,6 +159,28 @@ class _Decoder:
             tuple(state.slots),
             tuple(state.starts),
         )
+
+    def follow(self, placement: Placement) -> list[list[Offer | None]]:
+        instance = self.instance
+        state = self._begin(placement.sites)
+        table: list[list[Offer | None]] = []
+        for step in range(instance.steps):
+            self._place_new_wires(state, step)
+            known = len(instance.profiles[step]) == 1
+            row: list[Offer | None] = [None]
+            if not known:
+                row = [self._offer(state, step, c) for c in self.taste.recipes[step]]
+            table.append(row)
+            profile = instance.profiles[step][placement.recipes[step]]
+            where = local_sites(
+                instance, step, placement.sites, placement.slot_sites[step]
+            )
+            start = placement.starts[step]
+            end = start + duration(instance, profile, where)
+            slots = placement.slot_sites[step]
+            chosen = Offer(0.0, placement.recipes[step], slots, start, end)
+            self._commit(state, step, chosen)
+        return table
 
     def _place_new_wires(self, state: _State, step: int) -> None:
         """Give workspace wires that begin here a free site near their company."""
@@ -159,7 +211,7 @@ class _Decoder:
             raise Misfit("no free site for a workspace wire")
         state.sites[w] = best
 
-    def _best(self, state: _State, step: int) -> _Offer:
+    def _best(self, state: _State, step: int) -> Offer:
         offers = []
         for c in self.taste.recipes[step]:
             offer = self._offer(state, step, c)
@@ -169,7 +221,7 @@ class _Decoder:
             raise Misfit(f"step {step} has no recipe with room")
         return min(offers, key=lambda offer: (offer.price, offer.recipe))
 
-    def _offer(self, state: _State, step: int, c: int) -> _Offer | None:
+    def _offer(self, state: _State, step: int, c: int) -> Offer | None:
         profile = self.instance.profiles[step][c]
         operands = self.instance.operands[step]
         where = [state.sites[w] for w in operands]
@@ -201,7 +253,7 @@ class _Decoder:
         end = start + round(length)
         price += self.delay_price * self.hurry[step] * (end - ready)
         price += self._lender_delay(state, slots, end)
-        return _Offer(price, c, tuple(slots), start, end)
+        return Offer(price, c, tuple(slots), start, end)
 
     def _operand_price(self, profile: Profile, where: Sequence[int]) -> float:
         total = 0.0
@@ -213,7 +265,7 @@ class _Decoder:
             price = float(tables.pair_cost(pair.mask)[where[pair.a], where[pair.b]])
             if price >= tables.far_cost:
                 return HARD
-            gate = float(tables.gate_floor(pair.mask))
+            gate = self._floor(pair.mask)
             total += pair.count * (gate + scale * (price - gate))
         for local, site in enumerate(where):
             total += profile.ones[local] * float(tables.one[site])
@@ -288,15 +340,13 @@ class _Decoder:
         where: Sequence[int],
     ) -> None:
         scale = self.taste.move_scale
-        met = 0
         for pair in profile.pairs:
             other = pair.a if pair.b == local else pair.b if pair.a == local else -1
             if other < 0 or other >= len(where):
                 continue
             row = self.tables.pair_cost(pair.mask)[:, where[other]]
-            gate = float(self.tables.gate_floor(pair.mask))
+            gate = self._floor(pair.mask)
             price += pair.count * (gate + scale * (row - gate))
-            met += 1
 
     def _lender_delay(self, state: _State, slots: Sequence[int], end: int) -> float:
         total = 0.0
@@ -315,7 +365,7 @@ class _Decoder:
     def _next_step(self, state: _State, w: int) -> int:
         return self.next_use[len(state.starts)].get(w, -1)
 
-    def _commit(self, state: _State, step: int, offer: _Offer) -> None:
+    def _commit(self, state: _State, step: int, offer: Offer) -> None:
         state.recipes.append(offer.recipe)
         state.slots.append(offer.slots)
         state.starts.append(offer.start)

@@ -1,0 +1,90 @@
+"""The whole chain in one call: read, plan, write, re-read, check."""
+
+from __future__ import annotations
+
+import dataclasses
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from placer.check.verify import CheckResult, check_plan
+from placer.device.model import Budget, Device
+from placer.device.read import find_device
+from placer.errors import InternalError
+from placer.plan import Plan, to_json
+from placer.planner.assemble import plan_of
+from placer.planner.loop import Effort, run
+from placer.problem import Goal, make_problem
+from placer.program.model import Program
+from placer.program.read import load_program
+from placer.version import VERSION
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
+
+def plan(
+    program: Program | str | Path,
+    device: Device | str | Path,
+    *,
+    budget: Budget | float | None = None,
+    goal: Goal = "error",
+    only: Sequence[str] = (),
+    effort: Effort = "normal",
+    seed: int = 0,
+    open_inputs: bool = False,
+    progress: Callable[[str], None] = lambda _: None,
+) -> Plan:
+    """Plan a program on a device and return the checked plan.
+
+    Parameters
+    ----------
+    program, device
+        Loaded objects, paths, or names of shipped ones.
+    budget
+        A `Budget`, or the share of min(T1, T2) that one value may live (0 to 1, the
+        other limits then as in the device file); `None` takes the device's own.
+    goal
+        `error` for the least expected error of the included route, `estimate` for the
+        least placement cost (defined in DEVELOPERS.md).
+    only
+        Workspace policies to choose from (`clean`, `borrowed`, `level2`, `none`).
+    effort, seed
+        Amount of work and seed of every random choice; same values, same plan.
+    open_inputs
+        Take every wire that is not declared workspace as unknown at the start.
+    progress
+        Called with a short line at each stage.
+
+    Raises
+    ------
+    InputError
+        If an input is wrong or cannot fit.
+    NoPlan
+        If no plan exists under the limits.
+    OutOfTime
+        If none was found in the work allowed.
+    InternalError
+        If the plan found does not pass the check (a bug).
+    """
+    if not isinstance(device, Device):
+        device = find_device(str(device))
+    if not isinstance(program, Program):
+        program = load_program(str(program), open_inputs=open_inputs)
+    if isinstance(budget, float | int):
+        budget = dataclasses.replace(device.budget, share=float(budget))
+    problem = make_problem(device, program, budget=budget, goal=goal, only=only)
+    outcome = run(problem, effort=effort, seed=seed, progress=progress)
+    result = plan_of(outcome, version=VERSION, seed=seed, effort=effort, notes=())
+    progress("check")
+    verified = check_plan(to_json(result), "plan")
+    if not verified.ok:
+        lines = "\n".join(f"  {f.rule}: {f.where}: {f.what}" for f in verified.findings)
+        raise InternalError(f"the plan did not pass its own check:\n{lines}")
+    if verified.notes:
+        result = dataclasses.replace(result, notes=tuple(verified.notes))
+    return result
+
+
+def check(text: str, path: str = "plan") -> CheckResult:
+    """Check a plan from its JSON text alone; see `placer.check`."""
+    return check_plan(text, path)

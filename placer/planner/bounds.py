@@ -1,0 +1,113 @@
+"""Lower bounds that a reader can redo by hand.
+
+`least_estimate` bounds the placement cost, `floor_of_error` the expected error of any
+included route.  Both are sums of cheapest parts: valid for every plan, seldom tight.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
+
+    from placer.planner.placement import Instance
+    from placer.planner.profile import Profile
+
+ESTIMATE_RULE = "cheapest recipe of every call, plus decay over the longest chain"
+FLOOR_RULE = "gates of the cheapest recipe of every call on the best sites and links"
+
+Choice = tuple[tuple[int, ...], ...]
+
+
+def floor_of_error(instance: Instance, recipes: Choice) -> int:
+    """Return a cost that the figures of no plan can go below.
+
+    Every plan does the gates and measurements of one recipe per step somewhere.
+    """
+    return sum(
+        min(_gates(instance, instance.profiles[step][c]) for c in recipes[step])
+        for step in range(instance.steps)
+    )
+
+
+def least_estimate(instance: Instance, recipes: Choice) -> int:
+    """Return a placement cost that no plan can go below.
+
+    Adds to the gates: the slots' own decay at the best site, and for wires held from
+    the start to the end the longest chain of base durations at the best site.
+    """
+    rates = [int(instance.tables.rate[p]) for p in instance.usable]
+    rate = min(rates)
+    total = 0
+    for step in range(instance.steps):
+        total += min(
+            _gates(instance, instance.profiles[step][c])
+            + _slots(instance, instance.profiles[step][c], rate)
+            for c in recipes[step]
+        )
+    begins, chain = _chains(instance, recipes)
+    for w, wire in enumerate(instance.wires):
+        if not wire.uses:
+            total += 0 if wire.is_known_zero else rate * chain
+            continue
+        if wire.is_known_zero:
+            total += min(int(instance.tables.prep[p]) for p in instance.usable)
+            total += rate * _own_length(instance, recipes, w)
+        elif wire.ends_known:
+            last = wire.uses[-1]
+            total += rate * (begins[last] + _shortest(instance, recipes, last))
+        else:
+            total += rate * chain
+    return total
+
+
+def cheapest_first(instance: Instance, step: int) -> list[int]:
+    """Return a step's recipes by their gates on the best sites, cheapest first."""
+    row = instance.profiles[step]
+    return sorted(range(len(row)), key=lambda c: (_gates(instance, row[c]), c))
+
+
+def _gates(instance: Instance, profile: Profile) -> int:
+    tables = instance.tables
+    usable = instance.usable
+
+    def least(row: NDArray[np.int64]) -> int:
+        return min(int(row[p]) for p in usable)
+
+    total = sum(pair.count * tables.gate_floor(pair.mask) for pair in profile.pairs)
+    total += sum(profile.ones) * least(tables.one)
+    total += sum(profile.tees) * least(tables.tee)
+    total += sum(profile.reads) * least(tables.read)
+    total += sum(profile.wipes) * least(tables.wipe)
+    return total
+
+
+def _slots(instance: Instance, profile: Profile, rate: int) -> int:
+    total = 0
+    for slot, kind in enumerate(profile.built.slots):
+        if kind == "clean":
+            total += rate * profile.live_ns[slot]
+            total += min(int(instance.tables.prep[p]) for p in instance.usable)
+    return total
+
+
+def _shortest(instance: Instance, recipes: Choice, step: int) -> int:
+    return min(instance.profiles[step][c].base_ns for c in recipes[step])
+
+
+def _chains(instance: Instance, recipes: Choice) -> tuple[list[int], int]:
+    """Return the earliest start of every step and the least length of the program."""
+    ready = [0] * len(instance.wires)
+    begins = []
+    for step in range(instance.steps):
+        begin = max((ready[w] for w in instance.operands[step]), default=0)
+        begins.append(begin)
+        for w in instance.operands[step]:
+            ready[w] = begin + _shortest(instance, recipes, step)
+    return begins, max(ready, default=0)
+
+
+def _own_length(instance: Instance, recipes: Choice, w: int) -> int:
+    return sum(_shortest(instance, recipes, step) for step in instance.wires[w].uses)

@@ -1,0 +1,112 @@
+"""The staged search: decode, anneal, re-price, window by window, again.
+
+In: an instance and the open recipes.  Out: good placements, best estimate first.  All
+work is counted in moves and rounds, never in seconds.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from placer.planner.anneal import anneal, flow_of, move, neighbours_of
+from placer.planner.decode import Taste, decode
+from placer.planner.placement import Misfit, evaluate
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from placer.planner.placement import Instance, Placement
+
+Choice = tuple[tuple[int, ...], ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Candidate:
+    """A valid placement and its placement cost."""
+
+    estimate: int
+    placement: Placement
+
+
+@dataclass(frozen=True, slots=True)
+class Amount:
+    """How much work a search may do: rounds per start, annealing moves per round."""
+
+    rounds: int
+    moves: int
+    scales: tuple[float, ...]
+
+
+def search(
+    instance: Instance,
+    recipes: Choice,
+    *,
+    amount: Amount,
+    seed: int,
+    starts: Sequence[Placement] = (),
+) -> list[Candidate]:
+    """Return placements found from scratch and from given ones, best first."""
+    found: dict[tuple[object, ...], Candidate] = {}
+    links = neighbours_of(instance)
+    for number, scale in enumerate(amount.scales):
+        taste = Taste(recipes, move_scale=scale)
+        sites = _first_sites(instance)
+        earlier: Placement | None = None
+        if starts:
+            earlier = starts[number % len(starts)]
+            sites = list(earlier.sites)
+        for round_number in range(amount.rounds):
+            try:
+                placement = decode(instance, sites, taste, earlier)
+            except Misfit:
+                break
+            _keep(instance, placement, found)
+            is_fresh = not starts and round_number < (amount.rounds + 1) // 2
+            to = anneal(
+                flow_of(instance, placement, scale),
+                instance.usable,
+                links,
+                moves=amount.moves,
+                seed=seed * 1009 + number * 101 + round_number,
+                heat=1.0 if is_fresh else 0.1,
+            )
+            try:
+                placement = move(instance, placement, [int(p) for p in to])
+            except Misfit:
+                break
+            _keep(instance, placement, found)
+            earlier = placement
+            sites = list(placement.sites)
+    ranked = sorted(found.items(), key=lambda item: (item[1].estimate, item[0]))
+    return [candidate for _, candidate in ranked]
+
+
+def _keep(
+    instance: Instance,
+    placement: Placement,
+    found: dict[tuple[object, ...], Candidate],
+) -> None:
+    key = (placement.sites, placement.recipes, placement.slot_sites)
+    if key in found:
+        return
+    try:
+        found[key] = Candidate(evaluate(instance, placement).cost, placement)
+    except Misfit:
+        return
+
+
+def _first_sites(instance: Instance) -> list[int]:
+    """Return a compact first guess: wires in order of use, sites in order of reach."""
+    hop = instance.tables.hop
+    usable = instance.usable
+    centre = min(usable, key=lambda p: (int(hop[p, list(usable)].sum()), p))
+    near = sorted(usable, key=lambda p: (int(hop[centre, p]), p))
+    order = sorted(
+        range(len(instance.wires)),
+        key=lambda w: (instance.wires[w].is_workspace, -len(instance.wires[w].uses), w),
+    )
+    sites = [near[0]] * len(instance.wires)
+    for rank, w in enumerate(order):
+        sites[w] = near[rank % len(near)]
+    return sites
