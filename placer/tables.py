@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
-from placer.compiled import compiled
+from placer.compiled import compiled, inner
 from placer.device.fidelity import decay_slope, dephasing_rate, level2_decay_slope
 from placer.units import cost_of_error, rate_per_tick
 
@@ -261,7 +261,7 @@ def _rows(starts: Ints) -> Ints:
     return np.repeat(np.arange(len(starts) - 1, dtype=np.int64), np.diff(starts))
 
 
-@compiled
+@inner
 def _spread(starts: Ints, neighbours: Ints, lengths: Ints, far: int, least: Ints):  # type: ignore[no-untyped-def]
     """Lower `least`, a first guess per site, to the least sum along any path.
 
@@ -286,7 +286,7 @@ def _spread(starts: Ints, neighbours: Ints, lengths: Ints, far: int, least: Ints
                 size = _push(keys, names, size, through, neighbours[k])
 
 
-@compiled
+@inner
 def _push(keys: Ints, names: Ints, size: int, key: int, name: int) -> int:
     at = size
     while at > 0 and keys[(at - 1) // 2] > key:
@@ -296,7 +296,7 @@ def _push(keys: Ints, names: Ints, size: int, key: int, name: int) -> int:
     return size + 1
 
 
-@compiled
+@inner
 def _pop(keys: Ints, names: Ints, size: int) -> int:
     size -= 1
     key, name = keys[size], names[size]

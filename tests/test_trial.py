@@ -3,10 +3,13 @@
 from __future__ import annotations
 
 import dataclasses
+import itertools
 import math
 import random
 import time
 
+import networkx as nx
+import numpy as np
 import pytest
 from placed_samples import (
     grid,
@@ -212,19 +215,28 @@ def test_timeline_of_random_circuits_is_that_of_the_plain_follower(seed: int) ->
 
 
 def test_random_circuits_contain_everything() -> None:
-    seen = {"lender": 0, "free": 0, "shared": 0, "high swap": 0, "condition": 0}
+    seen = {
+        "lender": 0,
+        "free": 0,
+        "shared": 0,
+        "high swap": 0,
+        "condition": 0,
+        "level 2": 0,
+    }
     for seed in range(40):
         choices = random_choices(seed)
         placed, tables = place(*choices), device_tables(choices[0].device)
-        line = timeline(
-            placed, tables, route(placed, tables, setting=SETTINGS[0], seed=seed)
-        )
+        found = route(placed, tables, setting=SETTINGS[0], seed=seed)
+        line = timeline(placed, tables, found)
+        a, b = found.swap_a, found.swap_b
         flat = [w for row in choices[5] for w in row]
         seen["lender"] += sum(w is not None for w in flat)
         seen["free"] += sum(w is None for w in flat)
         seen["shared"] += len(placed.leases) - len(set(placed.home[placed.wires :]))
         seen["condition"] += int((placed.flow.cause >= 0).sum())
-        seen["high swap"] += int((line.swap_cost > 0).sum())
+        is_high = line.swap_cost == 3 * tables.two2[a, b]
+        seen["high swap"] += int((is_high & (line.swap_cost > 0)).sum())
+        seen["level 2"] += line.counts[6]
     assert all(count > 10 for count in seen.values()), seen
 
 
@@ -340,8 +352,6 @@ def test_bad_routes_are_refused() -> None:
     )
     placed, tables = place(*choices_of(problem, [0, 2])), device_tables(problem.device)
     good = route(placed, tables, setting=Setting(), seed=0)
-    import numpy as np
-
     for swaps in ((0, 2), (1, 1)):
         bad = dataclasses.replace(
             good, swap_a=np.array([swaps[0]]), swap_b=np.array([swaps[1]])
@@ -361,8 +371,6 @@ def planted(rng: random.Random, edges, count: int, blocks: int):
     A vertex of largest degree meets all its neighbours and then one more, which takes
     a swap; blocks follow one another by chains of gates (rebuilt independently).
     """
-    import networkx as nx
-
     graph = nx.Graph(edges)
     top = max(d for _, d in graph.degree)
     triples = [
@@ -379,9 +387,7 @@ def planted(rng: random.Random, edges, count: int, blocks: int):
         u, v, x = rng.choice(triples)
         if last is not None:
             path = nx.shortest_path(graph, last, u)
-            gates += [
-                (token_at[a], token_at[b]) for a, b in zip(path, path[1:], strict=False)
-            ]
+            gates += [(token_at[a], token_at[b]) for a, b in itertools.pairwise(path)]
         hub = token_at[u]
         gates += [(hub, token_at[n]) for n in sorted(graph[u])]
         token_at[u], token_at[v] = token_at[v], token_at[u]

@@ -300,7 +300,7 @@ def evaluate(
     for w in range(len(program.wire_names)):
         if program.register_at(w).start == "unknown":
             walk.touched.add(sites[w])
-    shares, stays = lives(problem, walk, alive, home, ops_of)
+    shares, stays = lives(problem, walk, home, ops_of)
     return Outcome(Costs(**walk.cost), walk.end, len(walk.touched), shares, stays, fine)
 
 
@@ -316,7 +316,7 @@ def windows(walk, token, events):
         yield now, walk.end, site, high
 
 
-def lives(problem, walk, alive, home, ops_of):
+def lives(problem, walk, home, ops_of):
     """Share of min(T1, T2) per value, longest share of a stay in level 2 per holder."""
     shares, stays = {}, {}
 

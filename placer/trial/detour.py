@@ -10,12 +10,13 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from placer.compiled import compiled
+from placer.compiled import compiled, inner
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from placer.placed import Flags, Ints
+    from placer.tables import Tables
 
 
 class Board(NamedTuple):
@@ -24,59 +25,57 @@ class Board(NamedTuple):
     starts: Ints
     neighbours: Ints
     capable: Flags
-    step: Ints
     hop: Ints
     at: Ints
     place: Ints
     high: Flags
 
 
+def straight(
+    tables: Tables, fits: Flags, place: Ints, one: int, two: int
+) -> list[tuple[int, int]]:
+    """Walk one token towards the other over the fewest and then the best links.
+
+    An empty list means that no way was found.
+    """
+    a, b = int(place[one]), int(place[two])
+    path: list[tuple[int, int]] = []
+    if tables.hop[a, b] >= tables.far:
+        return path
+    while not fits[a, b]:
+        links = range(int(tables.starts[a]), int(tables.starts[a + 1]))
+        _, nearer = min(
+            (int(tables.step[k]), int(tables.neighbours[k]))
+            for k in links
+            if tables.hop[tables.neighbours[k], b] < tables.hop[a, b]
+        )
+        path.append((a, nearer))
+        a = nearer
+    return path
+
+
 @compiled
-def detour(board: Board, fit: Flags, one: int, two: int, is_plain: bool) -> Ints:
-    """Return swaps (pairs of sites) that bring two tokens to a link that fits.
+def around(board: Board, fits: Flags, one: int, two: int) -> Ints:
+    """Return swaps that bring two tokens to a link that fits, among level-2 rules.
 
     An empty array means that no way was found.
     """
-    if is_plain and not board.high.any():
-        return _straight(board, fit, one, two)
-    path = _joint(board, fit, one, two, True)
+    path = _joint(board, fits, one, two, True)
     if len(path) > 0:
         return path
-    return _crowded(board, fit, one, two)
+    return _crowded(board, fits, one, two)
 
 
-@compiled
-def _straight(board: Board, fit: Flags, one: int, two: int) -> Ints:
-    """Walk one token towards the other over the fewest and then the best links."""
-    a, b = board.place[one], board.place[two]
-    length = board.hop[a, b]
-    if length >= len(board.at):
-        return np.empty((0, 2), dtype=np.int64)
-    path = np.empty((length, 2), dtype=np.int64)
-    count = 0
-    while not fit[a, b]:
-        best, nearer = -1, -1
-        for link in range(board.starts[a], board.starts[a + 1]):
-            n = board.neighbours[link]
-            if board.hop[n, b] < board.hop[a, b] and (
-                best < 0 or board.step[link] < board.step[best]
-            ):
-                best, nearer = link, n
-        path[count, 0], path[count, 1] = a, nearer
-        a = nearer
-        count += 1
-    return path[:count]
-
-
-@compiled
-def _joint(board: Board, fit: Flags, one: int, two: int, avoid: bool) -> Ints:
+@inner
+def _joint(board: Board, fits: Flags, one: int, two: int, avoid: bool) -> Ints:
     """Return a shortest way of both tokens together, by breadth-first search.
 
     All other tokens count as staying where they are.  With `avoid` the way never
     displaces another token in level 2, so that it can be walked as it is.
     """
     sites = len(board.at)
-    before = np.full(sites * sites, -1, dtype=np.int32)
+    before = np.empty(sites * sites, dtype=np.int32)
+    before[:] = -1
     line = np.empty(sites * sites, dtype=np.int32)
     begin = board.place[one] * sites + board.place[two]
     before[begin] = begin
@@ -86,7 +85,7 @@ def _joint(board: Board, fit: Flags, one: int, two: int, avoid: bool) -> Ints:
         here = line[head]
         head += 1
         p, q = here // sites, here % sites
-        if fit[p, q]:
+        if fits[p, q]:
             return _walk_back(before, begin, here, sites)
         for side in range(2):
             a = p if side == 0 else q
@@ -103,7 +102,7 @@ def _joint(board: Board, fit: Flags, one: int, two: int, avoid: bool) -> Ints:
     return np.empty((0, 2), dtype=np.int64)
 
 
-@compiled
+@inner
 def _may_move(
     board: Board, link: int, n: int, mover: int, one: int, two: int, avoid: bool
 ) -> bool:
@@ -120,7 +119,7 @@ def _may_move(
     return board.capable[link] or not (blocked or board.high[mover])
 
 
-@compiled
+@inner
 def _moved(p: int, q: int, side: int, n: int, sites: int) -> int:
     """Return the places, as one number, after one of two tokens moves to n."""
     if n in (p, q):
@@ -128,7 +127,7 @@ def _moved(p: int, q: int, side: int, n: int, sites: int) -> int:
     return n * sites + q if side == 0 else p * sites + n
 
 
-@compiled
+@inner
 def _walk_back(before: NDArray[np.int32], begin: int, end: int, sites: int) -> Ints:
     """Return the swaps that lead from the begin to the end of a search."""
     length = 0
@@ -148,21 +147,21 @@ def _walk_back(before: NDArray[np.int32], begin: int, end: int, sites: int) -> I
     return path
 
 
-@compiled
-def _crowded(board: Board, fit: Flags, one: int, two: int) -> Ints:
+@inner
+def _crowded(board: Board, fits: Flags, one: int, two: int) -> Ints:
     """Find a way through other tokens in level 2, step by step on a copy."""
     at, place = board.at.copy(), board.place.copy()
     copy = Board(
-        board.starts, board.neighbours, board.capable, board.step, board.hop,
+        board.starts, board.neighbours, board.capable, board.hop,
         at, place, board.high,
     )  # fmt: skip
     room = 8 * len(at)
     path = np.empty((room, 2), dtype=np.int64)
     count = 0
-    while not fit[place[one], place[two]]:
-        way = _joint(copy, fit, one, two, True)
+    while not fits[place[one], place[two]]:
+        way = _joint(copy, fits, one, two, True)
         if len(way) == 0:
-            way = _joint(copy, fit, one, two, False)[:1]
+            way = _joint(copy, fits, one, two, False)[:1]
         if len(way) == 0:
             way = _make_room(copy, one, two)
         if len(way) == 0 or count + len(way) > room:
@@ -177,7 +176,7 @@ def _crowded(board: Board, fit: Flags, one: int, two: int) -> Ints:
     return path[:count]
 
 
-@compiled
+@inner
 def _make_room(board: Board, one: int, two: int) -> Ints:
     """Push what is in level 2 away from the rim of its sites, nearest to the gate.
 
@@ -201,11 +200,12 @@ def _make_room(board: Board, one: int, two: int) -> Ints:
     return chosen
 
 
-@compiled
+@inner
 def _pull(board: Board, site: int, one: int, two: int) -> Ints:
     """Return swaps over capable links that bring something not in level 2 to a site."""
     sites = len(board.at)
-    before = np.full(sites, -1, dtype=np.int64)
+    before = np.empty(sites, dtype=np.int64)
+    before[:] = -1
     line = np.empty(sites, dtype=np.int64)
     before[site], line[0] = site, site
     head, tail = 0, 1

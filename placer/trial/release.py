@@ -4,13 +4,13 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from placer.compiled import compiled
+from placer.compiled import inner
 
 if TYPE_CHECKING:
     from placer.placed import Flow, Ints
 
 
-@compiled
+@inner
 def release(flow: Flow, done: int, waits: Ints, free: Ints, count: int) -> int:
     """Append to `free` what waited only for operation `done`; return its new length."""
     for entry in range(flow.first[done], flow.first[done + 1]):
@@ -30,7 +30,7 @@ def release(flow: Flow, done: int, waits: Ints, free: Ints, count: int) -> int:
     return count
 
 
-@compiled
+@inner
 def begin(waits: Ints, free: Ints) -> int:
     """Put into `free` what waits for nothing, the first on top; return its length."""
     count = 0

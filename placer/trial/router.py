@@ -17,13 +17,27 @@ import numpy as np
 from placer.errors import InternalError
 from placer.placed import LEVEL2
 from placer.plan import Route
-from placer.trial.search import DONE, FULL, Gates, Reach, advance, open_state
+from placer.trial.detour import Board, around, straight
+from placer.trial.search import (
+    DONE,
+    FRONT,
+    FULL,
+    MARK,
+    OLDEST,
+    SWAPS,
+    Gates,
+    Reach,
+    advance,
+    open_state,
+    wake,
+)
 
 if TYPE_CHECKING:
     from numpy.typing import NDArray
 
     from placer.placed import Ints, PlacedCircuit
     from placer.tables import Mask, Tables
+    from placer.trial.search import State
 
 _FAR = 1e9
 _FIRST_ROOM = 256
@@ -124,28 +138,83 @@ def route(
     """
     gates, masks = _gates(placed)
     reach = _reach(tables, masks, setting.care, _crowd(placed))
-    state = open_state(placed.flow, placed.sites, setting.lookahead, seed)
-    room = max(_FIRST_ROOM, len(placed.gates))
-    swaps = np.empty((room, 3), dtype=np.int64)
+    state = open_state(
+        placed.flow, len(tables.neighbours), placed.sites, setting.lookahead, seed
+    )
+    swaps = np.empty((max(_FIRST_ROOM, len(placed.gates)), 3), dtype=np.int64)
     finite = tables.hop[tables.hop < tables.far]
     patience = 10 + 2 * int(finite.max(initial=0))
     while True:
         status = advance(
-            placed.flow, gates, reach, state, swaps, setting.lookahead, setting.weight,
-            setting.decay, patience,
+            placed.flow, gates, reach, state, swaps, setting.weight, setting.decay,
+            patience,
         )  # fmt: skip
-        if status != FULL:
+        if status == DONE:
             break
-        swaps = np.concatenate([swaps, np.empty_like(swaps)])
-    if status != DONE:
-        return None
-    swaps = swaps[: state.tally[0]]
+        if status == FULL:
+            swaps = np.concatenate([swaps, np.empty_like(swaps)])
+            continue
+        way = _way_out(tables, gates, reach, state, swaps)
+        if way is None:
+            return None
+        swaps = way
+    swaps = swaps[: state.tally[SWAPS]]
     return RouteResult(
         state.gap_of_gate,
         swaps[:, 0].copy(),
         swaps[:, 1].copy(),
         np.bincount(placed.step[placed.gates[swaps[:, 2]]], minlength=placed.steps),
     )
+
+
+def _way_out(
+    tables: Tables, gates: Gates, reach: Reach, state: State, swaps: Ints
+) -> Ints | None:
+    """Take back what led nowhere, and bring the oldest gate that can be straight on.
+
+    Returns the list of swaps, enlarged where it had to be, or `None` for no way.
+    """
+    tally = state.tally
+    while tally[SWAPS] > tally[MARK]:
+        tally[SWAPS] -= 1
+        _exchange(state, *swaps[tally[SWAPS], :2].tolist())
+    for gate in sorted(state.front[: tally[FRONT]].tolist()):
+        path = _path(tables, gates, reach, state, gate)
+        if not path:
+            continue
+        while tally[SWAPS] + len(path) > len(swaps):
+            swaps = np.concatenate([swaps, np.empty_like(swaps)])
+        for a, b in path:
+            swaps[tally[SWAPS]] = min(a, b), max(a, b), tally[OLDEST]
+            tally[SWAPS] += 1
+            _exchange(state, a, b)
+        one, two, kind = gates.parts[gate].tolist()
+        if not reach.fits[kind, state.place[one], state.place[two]]:
+            raise InternalError(f"the way for two-body gate {gate} misses its link")
+        wake(state, gate)
+        return swaps
+    return None
+
+
+def _exchange(state: State, a: int, b: int) -> None:
+    one, two = state.at[a], state.at[b]
+    state.at[a], state.at[b] = two, one
+    state.place[one], state.place[two] = b, a
+
+
+def _path(
+    tables: Tables, gates: Gates, reach: Reach, state: State, gate: int
+) -> list[tuple[int, int]]:
+    one, two, kind = gates.parts[gate].tolist()
+    fits = reach.fits[kind]
+    if kind == 0 and not state.high.any():
+        return straight(tables, fits, state.place, one, two)
+    board = Board(
+        tables.starts, tables.neighbours, reach.capable, tables.hop,
+        state.at, state.place, state.high,
+    )  # fmt: skip
+    path = around(board, fits, one, two).tolist()
+    return [(a, b) for a, b in path]
 
 
 def _gates(placed: PlacedCircuit) -> tuple[Gates, list[Mask]]:
@@ -165,9 +234,7 @@ def _gates(placed: PlacedCircuit) -> tuple[Gates, list[Mask]]:
     return (
         Gates(
             operation=placed.gates,
-            one=one,
-            two=two,
-            kind=np.searchsorted(found, key).astype(np.int64),
+            parts=np.stack([one, two, np.searchsorted(found, key)], axis=1),
             following=following,
         ),
         masks,
@@ -208,13 +275,20 @@ def _reach(tables: Tables, masks: list[Mask], care: float, crowd: int) -> Reach:
     return Reach(
         starts=tables.starts,
         neighbours=tables.neighbours,
+        back=_back(rows, tables.neighbours),
         capable=capable,
         own=np.asarray((1.0 - care) + (care / scale) * tables.step, dtype=np.float64),
-        hop=tables.hop,
-        step=tables.step,
         fits=np.stack(fits),
         ranges=np.stack(ranges),
     )
+
+
+def _back(ends: Ints, others: Ints) -> Ints:
+    """Return the number of each link as seen from its other end."""
+    # Links are sorted by (end, other), so sorting by (other, end) pairs them up.
+    back = np.empty(len(ends), dtype=np.int64)
+    back[np.lexsort((ends, others))] = np.arange(len(ends))
+    return back
 
 
 def _roomy(tables: Tables, ends: Ints, others: Ints, crowd: int) -> NDArray[np.bool_]:

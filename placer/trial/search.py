@@ -10,9 +10,8 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from placer.compiled import compiled
+from placer.compiled import compiled, inner
 from placer.placed import TWO
-from placer.trial.detour import Board, detour
 from placer.trial.release import begin, release
 
 if TYPE_CHECKING:
@@ -22,40 +21,39 @@ if TYPE_CHECKING:
 
     Reals = NDArray[np.float64]
 
-DONE, FULL, STUCK, GOING = range(4)
-"""How `advance` ended: all gates done, no room for more swaps, no way to go on."""
+DONE, FULL, STUCK = range(3)
+"""How `advance` ended: all gates done, no room for more swaps, nothing moves on."""
 
-# What `State.tally` counts.
-_SWAPS, _FRONT, _OLDEST, _MARK, _AHEAD, _QUEUED, _STARTED, _LAST_RESET, _STAMP = range(
-    9
-)
+SWAPS, FRONT, OLDEST, MARK, QUEUED = range(5)
+"""What `State.tally` counts: swaps, gates in the front, the oldest gate not done,
+swaps up to the last gate, gates to test."""
+_AHEAD, _LAST_RESET, _STAMP, _STARTED, _DIRTY = range(5, 10)
 _RESET_EVERY = 5  # swaps after which the surcharges on sites are forgotten
+_EQUAL = 1e-9  # scores nearer than this are equal, and lots are drawn
 
 
 class Gates(NamedTuple):
-    """Two-body gates: operation, both tokens, kind, next gate on either token."""
+    """Two-body gates: operation; tokens and kind; next gate on either token."""
 
     operation: Ints
-    one: Ints
-    two: Ints
-    kind: Ints
+    parts: Ints  # first token, second token, kind
     following: Ints
 
 
 class Reach(NamedTuple):
-    """Usable links by site, whether they carry level 2, and distances.
+    """Usable links by site, in the order of the tables, and distances.
 
-    `own` is the price of a swap over each link in the unit of `ranges[kind, p, q]`,
-    the distance that a pair of tokens has yet to go; `fits[kind, p, q]` says where a
-    gate may happen; `hop` and `step` are those of the tables.
+    `back` is the number of the same link from the other end, `capable` whether what
+    is in level 2 may be swapped over it, `own` the price of a swap in the unit of
+    `ranges[kind, p, q]`, the distance that a pair of tokens has yet to go;
+    `fits[kind, p, q]` says where a gate may happen.
     """
 
     starts: Ints
     neighbours: Ints
+    back: Ints
     capable: Flags
     own: Reals
-    hop: Ints
-    step: Ints
     fits: NDArray[np.bool_]
     ranges: Reals
 
@@ -79,17 +77,19 @@ class State(NamedTuple):
     chain: Ints  # next place of the same token
     seen: Ints
     surcharge: Reals
+    gain: Reals  # change of ranges, front and ahead, when a link's token takes it
+    dirty: Ints  # tokens whose gains are stale
+    is_dirty: Flags
     random: NDArray[np.uint64]
 
 
-def open_state(flow: Flow, sites: int, lookahead: int, seed: int) -> State:
+def open_state(flow: Flow, links: int, sites: int, lookahead: int, seed: int) -> State:
     """Return the state before the first operation."""
     gates = int((flow.code >= TWO).sum())
     own = np.arange(sites, dtype=np.int64)
-    tally = np.zeros(9, dtype=np.int64)
-    mixed = np.random.SeedSequence(seed).generate_state(1, np.uint64) | np.uint64(1)
+    seeded = np.random.SeedSequence(seed).generate_state(1, np.uint64)
     return State(
-        tally=tally,
+        tally=np.zeros(10, dtype=np.int64),
         at=own,
         place=own.copy(),
         high=np.zeros(sites, dtype=np.bool_),
@@ -100,16 +100,34 @@ def open_state(flow: Flow, sites: int, lookahead: int, seed: int) -> State:
         queue=np.empty(2 * sites + 4, dtype=np.int64),
         is_done=np.zeros(gates + 1, dtype=np.bool_),
         gap_of_gate=np.full(gates, -1, dtype=np.int64),
-        ahead=np.empty(max(1, lookahead), dtype=np.int64),
+        ahead=np.empty(lookahead, dtype=np.int64),
         head=np.full(sites, -1, dtype=np.int64),
-        chain=np.full(2 * max(1, lookahead), -1, dtype=np.int64),
+        chain=np.full(2 * lookahead, -1, dtype=np.int64),
         seen=np.full(gates, -1, dtype=np.int64),
         surcharge=np.ones(sites, dtype=np.float64),
-        random=mixed.astype(np.uint64),
+        gain=np.zeros((links, 2), dtype=np.float64),
+        dirty=np.empty(sites, dtype=np.int64),
+        is_dirty=np.zeros(sites, dtype=np.bool_),
+        random=(seeded | np.uint64(1)).astype(np.uint64),
     )
 
 
-@compiled
+@inner
+def _touch(state: State, token: int) -> None:
+    """Note that the gains of a token are stale."""
+    if not state.is_dirty[token]:
+        state.is_dirty[token] = True
+        state.dirty[state.tally[_DIRTY]] = token
+        state.tally[_DIRTY] += 1
+
+
+@inner
+def _touch_gate(gates: Gates, state: State, gate: int) -> None:
+    _touch(state, gates.parts[gate, 0])
+    _touch(state, gates.parts[gate, 1])
+
+
+@inner
 def _settle(flow: Flow, gates: Gates, state: State, size: int) -> None:
     """Let happen all that needs no link; put free gates into the front."""
     tally = state.tally
@@ -121,15 +139,16 @@ def _settle(flow: Flow, gates: Gates, state: State, size: int) -> None:
             _mark_levels(flow, state, operation)
             size = release(flow, operation, state.waits, state.free, size)
             continue
-        state.front[tally[_FRONT]] = gate
-        tally[_FRONT] += 1
-        state.front_of[gates.one[gate]] = gate
-        state.front_of[gates.two[gate]] = gate
-        state.queue[tally[_QUEUED]] = gate
-        tally[_QUEUED] += 1
+        state.front[tally[FRONT]] = gate
+        tally[FRONT] += 1
+        state.front_of[gates.parts[gate, 0]] = gate
+        state.front_of[gates.parts[gate, 1]] = gate
+        _touch_gate(gates, state, gate)
+        state.queue[tally[QUEUED]] = gate
+        tally[QUEUED] += 1
 
 
-@compiled
+@inner
 def _mark_levels(flow: Flow, state: State, operation: int) -> None:
     for e in range(flow.first[operation], flow.first[operation + 1]):
         if flow.enters[e]:
@@ -138,135 +157,138 @@ def _mark_levels(flow: Flow, state: State, operation: int) -> None:
             state.high[flow.token[e]] = False
 
 
-@compiled
+@inner
 def _run_gates(flow: Flow, gates: Gates, reach: Reach, state: State) -> bool:
     """Do every queued gate that is on its link, and what comes free by it."""
     tally = state.tally
     moved_on = False
-    while tally[_QUEUED] > 0:
-        tally[_QUEUED] -= 1
-        gate = state.queue[tally[_QUEUED]]
-        one, two = gates.one[gate], gates.two[gate]
+    while tally[QUEUED] > 0:
+        tally[QUEUED] -= 1
+        gate = state.queue[tally[QUEUED]]
+        one, two, kind = gates.parts[gate]
         if state.is_done[gate]:
             continue
-        if not reach.fits[gates.kind[gate], state.place[one], state.place[two]]:
+        if not reach.fits[kind, state.place[one], state.place[two]]:
             continue
         moved_on = True
         state.is_done[gate] = True
-        state.gap_of_gate[gate] = tally[_SWAPS]
+        state.gap_of_gate[gate] = tally[SWAPS]
         state.front_of[one] = -1
         state.front_of[two] = -1
+        _touch_gate(gates, state, gate)
         _leave_front(state, gate)
         operation = gates.operation[gate]
         _mark_levels(flow, state, operation)
-        _settle(
-            flow, gates, state, release(flow, operation, state.waits, state.free, 0)
-        )
-    while state.is_done[tally[_OLDEST]]:
-        tally[_OLDEST] += 1
+        size = release(flow, operation, state.waits, state.free, 0)
+        _settle(flow, gates, state, size)
+    while state.is_done[tally[OLDEST]]:
+        tally[OLDEST] += 1
     return moved_on
 
 
-@compiled
+@inner
 def _leave_front(state: State, gate: int) -> None:
     at = 0
     while state.front[at] != gate:
         at += 1
-    state.tally[_FRONT] -= 1
-    for k in range(at, state.tally[_FRONT]):
+    state.tally[FRONT] -= 1
+    for k in range(at, state.tally[FRONT]):
         state.front[k] = state.front[k + 1]
 
 
-@compiled
-def _look_ahead(gates: Gates, state: State, limit: int) -> None:
+@inner
+def _look_ahead(gates: Gates, state: State) -> None:
     """Collect the extended set: the gates nearest behind the front layer."""
     tally = state.tally
+    limit = len(state.ahead)
     for k in range(tally[_AHEAD]):
-        state.head[gates.one[state.ahead[k]]] = -1
-        state.head[gates.two[state.ahead[k]]] = -1
+        gate = state.ahead[k]
+        state.head[gates.parts[gate, 0]] = -1
+        state.head[gates.parts[gate, 1]] = -1
+        _touch_gate(gates, state, gate)
     tally[_AHEAD] = 0
     tally[_STAMP] += 1
-    stamp = tally[_STAMP]
     at = 0
-    while at < tally[_FRONT] + tally[_AHEAD] and tally[_AHEAD] < limit:
-        if at < tally[_FRONT]:
-            gate = state.front[at]
-        else:
-            gate = state.ahead[at - tally[_FRONT]]
+    while at < tally[FRONT] + tally[_AHEAD] and tally[_AHEAD] < limit:
+        behind = at - tally[FRONT]
+        gate = state.front[at] if behind < 0 else state.ahead[behind]
         at += 1
         for side in range(2):
             after = gates.following[gate, side]
-            if after < 0 or state.seen[after] == stamp or tally[_AHEAD] >= limit:
+            if after < 0 or state.seen[after] == tally[_STAMP]:
                 continue
-            state.seen[after] = stamp
-            _append_ahead(gates, state, after)
+            state.seen[after] = tally[_STAMP]
+            if tally[_AHEAD] < limit:
+                _append_ahead(gates, state, after)
 
 
-@compiled
+@inner
 def _append_ahead(gates: Gates, state: State, gate: int) -> None:
     number = state.tally[_AHEAD]
     state.ahead[number] = gate
-    state.chain[2 * number] = state.head[gates.one[gate]]
-    state.head[gates.one[gate]] = 2 * number
-    state.chain[2 * number + 1] = state.head[gates.two[gate]]
-    state.head[gates.two[gate]] = 2 * number + 1
+    for side in range(2):
+        token = gates.parts[gate, side]
+        state.chain[2 * number + side] = state.head[token]
+        state.head[token] = 2 * number + side
+    _touch_gate(gates, state, gate)
     state.tally[_AHEAD] += 1
 
 
-@compiled
-def _range(gates: Gates, reach: Reach, state: State, gate: int) -> float:
-    p, q = state.place[gates.one[gate]], state.place[gates.two[gate]]
-    return float(reach.ranges[gates.kind[gate], p, q])
-
-
-@compiled
+@inner
 def _change(
-    gates: Gates, reach: Reach, state: State, gate: int, s: int, t: int
+    parts: Ints, ranges: Reals, place: Ints, gate: int, token: int, to: int
 ) -> float:
-    """Return how the range of a gate changes when tokens s and t change places."""
-    one, two = gates.one[gate], gates.two[gate]
-    p, q = state.place[one], state.place[two]
-    a, b = p, q
-    if one == s:
-        a = state.place[t]
-    elif one == t:
-        a = state.place[s]
-    if two == s:
-        b = state.place[t]
-    elif two == t:
-        b = state.place[s]
-    kind = gates.kind[gate]
-    return float(reach.ranges[kind, a, b] - reach.ranges[kind, p, q])
+    """Return how the range of a gate changes when one of its tokens moves to a site.
+
+    If its partner is there they change places, of which each counts a half.
+    """
+    one, two, kind = parts[gate, 0], parts[gate, 1], parts[gate, 2]
+    p, q = place[one], place[two]
+    before = ranges[kind, p, q]
+    if token == one:
+        if q == to:
+            return 0.5 * float(ranges[kind, q, p] - before)
+        return float(ranges[kind, to, q] - before)
+    if p == to:
+        return 0.5 * float(ranges[kind, q, p] - before)
+    return float(ranges[kind, p, to] - before)
 
 
-@compiled
-def _front_change(gates: Gates, reach: Reach, state: State, s: int, t: int) -> float:
-    gate, other = state.front_of[s], state.front_of[t]
+@inner
+def _refresh(gates: Gates, reach: Reach, state: State) -> None:
+    """Work out the gains of every token that was touched."""
+    parts, ranges, place = gates.parts, reach.ranges, state.place
+    for k in range(state.tally[_DIRTY]):
+        token = state.dirty[k]
+        state.is_dirty[token] = False
+        site = place[token]
+        for link in range(reach.starts[site], reach.starts[site + 1]):
+            to = reach.neighbours[link]
+            gate = state.front_of[token]
+            near, later = 0.0, 0.0
+            if gate >= 0:
+                near = _change(parts, ranges, place, gate, token, to)
+            item = state.head[token]
+            while item >= 0:
+                gate = state.ahead[item // 2]
+                later += _change(parts, ranges, place, gate, token, to)
+                item = state.chain[item]
+            state.gain[link, 0] = near
+            state.gain[link, 1] = later
+    state.tally[_DIRTY] = 0
+
+
+@inner
+def _sum(gates: Gates, reach: Reach, state: State, some: Ints, count: int) -> float:
+    """Return the sum of the ranges of gates."""
     total = 0.0
-    if gate >= 0:
-        total += _change(gates, reach, state, gate, s, t)
-    if other >= 0 and other != gate:
-        total += _change(gates, reach, state, other, s, t)
+    for k in range(count):
+        one, two, kind = gates.parts[some[k]]
+        total += reach.ranges[kind, state.place[one], state.place[two]]
     return total
 
 
-@compiled
-def _ahead_change(gates: Gates, reach: Reach, state: State, s: int, t: int) -> float:
-    total = 0.0
-    link = state.head[s]
-    while link >= 0:
-        total += _change(gates, reach, state, state.ahead[link // 2], s, t)
-        link = state.chain[link]
-    link = state.head[t]
-    while link >= 0:
-        gate = state.ahead[link // 2]
-        if gates.one[gate] != s and gates.two[gate] != s:
-            total += _change(gates, reach, state, gate, s, t)
-        link = state.chain[link]
-    return total
-
-
-@compiled
+@inner
 def _draw(state: State, below: int) -> int:
     """Return a random number below a bound (xorshift, Marsaglia 2003)."""
     x = state.random[0]
@@ -277,156 +299,128 @@ def _draw(state: State, below: int) -> int:
     return int((x >> np.uint64(33)) % np.uint64(below))
 
 
-@compiled
-def _choose(gates: Gates, reach: Reach, state: State, weight: float) -> tuple[int, int]:
-    """Return the swap of least score that touches the front, (-1, -1) for none."""
-    tally = state.tally
-    front, ahead = tally[_FRONT], tally[_AHEAD]
-    front_sum, ahead_sum = 0.0, 0.0
-    for k in range(front):
-        front_sum += _range(gates, reach, state, state.front[k])
-    for k in range(ahead):
-        ahead_sum += _range(gates, reach, state, state.ahead[k])
+@inner
+def _choose(gates: Gates, reach: Reach, state: State, weight: float) -> int:
+    """Return the link whose swap has the least score and touches the front, or -1."""
+    front, ahead = state.tally[FRONT], state.tally[_AHEAD]
     far = weight / max(1, ahead)
-    best, best_a, best_b, ties = np.inf, -1, -1, 0
+    base = _sum(gates, reach, state, state.front, front) / front
+    base += far * _sum(gates, reach, state, state.ahead, ahead)
+    gain, back, high, surcharge = state.gain, reach.back, state.high, state.surcharge
+    best, chosen, ties = np.inf, -1, 0
     for k in range(2 * front):
-        gate = state.front[k // 2]
-        s = gates.one[gate] if k % 2 == 0 else gates.two[gate]
-        a = state.place[s]
-        for link in range(reach.starts[a], reach.starts[a + 1]):
-            b = reach.neighbours[link]
-            t = state.at[b]
-            if state.front_of[t] >= 0 and b < a:
+        token = gates.parts[state.front[k // 2], k % 2]
+        site = state.place[token]
+        for link in range(reach.starts[site], reach.starts[site + 1]):
+            other = reach.neighbours[link]
+            mate = state.at[other]
+            if other < site and state.front_of[mate] >= 0:
                 continue  # seen from the other end
-            if (state.high[s] or state.high[t]) and not reach.capable[link]:
+            if (high[token] or high[mate]) and not reach.capable[link]:
                 continue
-            near = front_sum + _front_change(gates, reach, state, s, t)
-            score = (near + reach.own[link]) / front
-            score += far * (ahead_sum + _ahead_change(gates, reach, state, s, t))
-            score *= max(state.surcharge[a], state.surcharge[b])
-            if score < best - 1e-9:
-                best, best_a, best_b, ties = score, a, b, 1
-            elif score <= best + 1e-9:
+            near = gain[link, 0] + gain[back[link], 0] + reach.own[link]
+            later = gain[link, 1] + gain[back[link], 1]
+            score = base + near / front + far * later
+            score *= max(surcharge[site], surcharge[other])
+            if score < best - _EQUAL:
+                best, chosen, ties = score, link, 1
+            elif score <= best + _EQUAL:
                 ties += 1
                 if _draw(state, ties) == 0:
-                    best_a, best_b = a, b
-    return best_a, best_b
+                    chosen = link
+    return chosen
 
 
-@compiled
-def _exchange(state: State, swaps: Ints, a: int, b: int) -> None:
+@inner
+def _touch_all(gates: Gates, state: State, token: int) -> None:
+    """Touch a token that has moved, and all that have it as a partner."""
+    _touch(state, token)
+    gate = state.front_of[token]
+    if gate >= 0:
+        _touch_gate(gates, state, gate)
+    item = state.head[token]
+    while item >= 0:
+        _touch_gate(gates, state, state.ahead[item // 2])
+        item = state.chain[item]
+
+
+@inner
+def _exchange(gates: Gates, state: State, swaps: Ints, a: int, b: int) -> None:
     """Swap what is on two sites, write it down, queue the gates concerned."""
     tally = state.tally
     one, two = state.at[a], state.at[b]
     state.at[a], state.at[b] = two, one
     state.place[one], state.place[two] = b, a
-    number = tally[_SWAPS]
+    number = tally[SWAPS]
     swaps[number, 0], swaps[number, 1] = min(a, b), max(a, b)
-    swaps[number, 2] = tally[_OLDEST]
-    tally[_SWAPS] += 1
+    swaps[number, 2] = tally[OLDEST]
+    tally[SWAPS] += 1
     for token in (one, two):
+        _touch_all(gates, state, token)
         gate = state.front_of[token]
         if gate >= 0:
-            state.queue[tally[_QUEUED]] = gate
-            tally[_QUEUED] += 1
+            state.queue[tally[QUEUED]] = gate
+            tally[QUEUED] += 1
 
 
-@compiled
-def _take_back(state: State, swaps: Ints) -> None:
-    """Undo the swaps since the last gate: they led nowhere."""
+@inner
+def _swap_one(
+    gates: Gates, reach: Reach, state: State, swaps: Ints, weight: float, decay: float
+) -> bool:
+    """Make the swap of least score; say whether there was one."""
     tally = state.tally
-    while tally[_SWAPS] > tally[_MARK]:
-        tally[_SWAPS] -= 1
-        a, b = swaps[tally[_SWAPS], 0], swaps[tally[_SWAPS], 1]
-        one, two = state.at[a], state.at[b]
-        state.at[a], state.at[b] = two, one
-        state.place[one], state.place[two] = b, a
-
-
-@compiled
-def _way_out(gates: Gates, reach: Reach, state: State, swaps: Ints) -> bool:
-    """Bring the oldest gate that can be brought to a link straight there."""
-    tally = state.tally
-    _take_back(state, swaps)
-    board = Board(
-        reach.starts, reach.neighbours, reach.capable, reach.step, reach.hop,
-        state.at, state.place, state.high,
-    )  # fmt: skip
-    ranked = np.sort(state.front[: tally[_FRONT]])
-    for gate in ranked:
-        fit = reach.fits[gates.kind[gate]]
-        path = detour(
-            board, fit, gates.one[gate], gates.two[gate], gates.kind[gate] == 0
-        )
-        if len(path) == 0:
-            continue
-        for k in range(len(path)):
-            _exchange(state, swaps, path[k, 0], path[k, 1])
-            # Nothing may happen on the way: the path was made for what stands now.
-            tally[_QUEUED] = 0
-        state.queue[0] = gate
-        tally[_QUEUED] = 1
-        return True
-    return False
-
-
-@compiled
-def _requeue(state: State) -> None:
-    """Test every gate of the front again."""
-    for k in range(state.tally[_FRONT]):
-        state.queue[k] = state.front[k]
-    state.tally[_QUEUED] = state.tally[_FRONT]
-
-
-@compiled
-def _step(
-    gates: Gates, reach: Reach, state: State, swaps: Ints, weight: float, decay: float,
-    patience: int,
-) -> bool:  # fmt: skip
-    """Make one swap of choice, or the swaps of a way out; say whether it went on."""
-    tally = state.tally
-    a, b = -1, -1
-    if tally[_SWAPS] - tally[_MARK] < patience:
-        a, b = _choose(gates, reach, state, weight)
-    if a < 0:
-        if not _way_out(gates, reach, state, swaps):
-            return False
-        gate = state.queue[0]
-        _requeue(state)
-        # The gate that the way was made for must be done first.
-        state.queue[tally[_QUEUED]] = gate
-        tally[_QUEUED] += 1
-        return True
-    if (tally[_SWAPS] - tally[_LAST_RESET]) >= _RESET_EVERY:
+    _refresh(gates, reach, state)
+    link = _choose(gates, reach, state, weight)
+    if link < 0:
+        return False
+    if tally[SWAPS] - tally[_LAST_RESET] >= _RESET_EVERY:
         state.surcharge[:] = 1.0
-        tally[_LAST_RESET] = tally[_SWAPS]
+        tally[_LAST_RESET] = tally[SWAPS]
+    a, b = reach.neighbours[reach.back[link]], reach.neighbours[link]
     state.surcharge[a] += decay
     state.surcharge[b] += decay
-    _exchange(state, swaps, a, b)
+    _exchange(gates, state, swaps, a, b)
     return True
 
 
 @compiled
 def advance(
-    flow: Flow, gates: Gates, reach: Reach, state: State, swaps: Ints, lookahead: int,
-    weight: float, decay: float, patience: int,
+    flow: Flow, gates: Gates, reach: Reach, state: State, swaps: Ints, weight: float,
+    decay: float, patience: int,
 ) -> int:  # fmt: skip
-    """Search until all gates are done, the room for swaps is used up, or no way."""
+    """Search until all gates are done, the room for swaps is used up, or no way.
+
+    Can be called again after it has stopped: with more room, or after the tokens were
+    moved from outside (then every token must be touched, see `wake`).
+    """
     tally = state.tally
     if tally[_STARTED] == 0:
         tally[_STARTED] = 1
         _settle(flow, gates, state, begin(state.waits, state.free))
-        _run_gates(flow, gates, reach, state)
-        _look_ahead(gates, state, lookahead)
-    longest = patience + 16 * len(state.at)
-    while tally[_FRONT] > 0:
-        if tally[_SWAPS] + longest > len(swaps):
-            return FULL
-        if not _step(gates, reach, state, swaps, weight, decay, patience):
-            return STUCK
+        _look_ahead(gates, state)
+    while True:
         if _run_gates(flow, gates, reach, state):
-            tally[_MARK] = tally[_SWAPS]
-            tally[_LAST_RESET] = tally[_SWAPS]
+            tally[MARK] = tally[SWAPS]
+            tally[_LAST_RESET] = tally[SWAPS]
             state.surcharge[:] = 1.0
-            _look_ahead(gates, state, lookahead)
-    return DONE
+            _look_ahead(gates, state)
+        if tally[FRONT] == 0:
+            return DONE
+        if tally[SWAPS] == len(swaps):
+            return FULL
+        if tally[SWAPS] - tally[MARK] >= patience:
+            return STUCK
+        if not _swap_one(gates, reach, state, swaps, weight, decay):
+            return STUCK
+
+
+def wake(state: State, gate: int) -> None:
+    """Make the search look at every token and gate anew, at one gate first."""
+    tally = state.tally
+    state.dirty[:] = np.arange(len(state.dirty))
+    state.is_dirty[:] = True
+    tally[_DIRTY] = len(state.dirty)
+    count = int(tally[FRONT])
+    state.queue[:count] = state.front[:count]
+    state.queue[count] = gate
+    tally[QUEUED] = count + 1

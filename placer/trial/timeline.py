@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from placer.compiled import compiled
+from placer.compiled import compiled, inner
 from placer.device.fidelity import dephasing_rate, level2_process_fidelity
 from placer.errors import InternalError
 from placer.placed import BARRIER, LEVEL2, MEASURE, ONE, RESET, TEE, TWO
@@ -144,7 +144,7 @@ class Timeline:
         return best
 
 
-@compiled
+@inner
 def _window(
     places: Places, lives: Lives, tokens: Tokens, token: int, until: int,
     record: Record, count: int,
@@ -165,7 +165,7 @@ def _window(
     return count
 
 
-@compiled
+@inner
 def _live(
     places: Places, lives: Lives, tokens: Tokens, token: int, span: int, record: Record
 ) -> None:
@@ -178,7 +178,7 @@ def _live(
         tokens.stay[token] += span / places.level2_lifetime_ns[site]
 
 
-@compiled
+@inner
 def _length(flow: Flow, places: Places, tokens: Tokens, operation: int) -> int:
     """Return how long an operation takes where its tokens are, in ns."""
     site = tokens.place[flow.token[flow.first[operation]]]
@@ -198,7 +198,7 @@ def _length(flow: Flow, places: Places, tokens: Tokens, operation: int) -> int:
     return int(links[site, other])
 
 
-@compiled
+@inner
 def _fault(flow: Flow, places: Places, tokens: Tokens, gate: int) -> int:
     """Return why a two-body gate cannot happen now, 0 if it can."""
     entry = flow.first[gate]
@@ -213,7 +213,7 @@ def _fault(flow: Flow, places: Places, tokens: Tokens, gate: int) -> int:
     return _GOOD
 
 
-@compiled
+@inner
 def _perform(
     flow: Flow, places: Places, lives: Lives, tokens: Tokens, operation: int,
     record: Record, count: int,
@@ -249,7 +249,7 @@ def _perform(
     return count
 
 
-@compiled
+@inner
 def _swap(
     places: Places, lives: Lives, tokens: Tokens, number: int, a: int, b: int,
     record: Record, count: int,
@@ -273,7 +273,7 @@ def _swap(
     return count
 
 
-@compiled
+@inner
 def _run_free(
     flow: Flow, places: Places, lives: Lives, tokens: Tokens, record: Record,
     waits: Ints, free: Ints, ready: Flags, size: int, count: int,
