@@ -12,7 +12,10 @@ Part = Literal["", "compute", "body", "cleanup"]
 
 
 class Step(NamedTuple):
-    """An operation without its number."""
+    """An operation without its number.
+
+    An `is_frame` step is one of a pair that leaves its wire as it was.
+    """
 
     kind: OperationKind
     name: str
@@ -24,6 +27,7 @@ class Step(NamedTuple):
     scope: int = -1
     part: Part = ""
     annotations: tuple[str, ...] = ()
+    is_frame: bool = False
 
 
 @dataclass(slots=True)

@@ -141,7 +141,7 @@ def _binary(item: Item, left: Number, right: Number, dialect: str) -> Number:
         return left * right
     if word == "/":
         return _quotient(item, left, right, dialect)
-    if word == "**" or (word == "^" and dialect == "openqasm2"):
+    if word == "**" or (word == "^" and dialect != "openqasm3"):
         return _power(left, right)
     if isinstance(left, int) and isinstance(right, int):
         return _on_whole(item, left, right)
