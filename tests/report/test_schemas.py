@@ -10,8 +10,10 @@ import jsonschema
 import pytest
 import yaml
 
+import placer.program
 from placer.errors import InputError
 from placer.plan import to_json
+from placer.program.read import read_program
 from placer.report.schema import SCHEMAS, faults_of, schema_text
 from tests.report.sample_plan import plan
 
@@ -25,6 +27,8 @@ def typed(value):
         return {str(k): typed(v) for k, v in value.items()}
     if isinstance(value, list):
         return [typed(v) for v in value]
+    if value == "":
+        return None
     if value in ("true", "false"):
         return value == "true"
     if _NUMBER.fullmatch(value):
@@ -80,6 +84,44 @@ def test_shipped_devices_keep_the_schema(path):
     data["sites"]["t3_us"] = 5
     data["links"]["error"] = 1.2
     assert len(faults_of("device", data)) == 2
+
+
+def described_program() -> str:
+    """Return the program that the description of the format shows."""
+    folder = Path(placer.program.__file__).parent
+    text = (folder / "program-yaml.md").read_text()
+    return text.split("```yaml\n")[1].split("```")[0]
+
+
+def test_the_described_program_keeps_the_schema():
+    text = described_program()
+    data = typed(yaml.load(text, Loader=yaml.BaseLoader))
+    assert faults_of("program", data) == []
+    used = {key for step in data["steps"] for key in step}
+    assert {"mcx", "mcz", "mcp", "scope", "repeat", "measure"} <= used
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ("registers:", "register:"),
+        ("start: zero}", "start: one}"),
+        ("start: zero}", "begin: zero}"),
+        ("width: 4", "width: 0"),
+        ("- h: a ", "- hh: a "),
+        ("target: t}", "goal: t}"),
+        ("times: 3", "times: many"),
+        ("compute:", "computes:"),
+    ],
+)
+def test_the_schema_refuses_what_the_reader_refuses(old, new):
+    text = described_program()
+    read_program(text, "described.yaml")
+    assert old in text
+    text = text.replace(old, new, 1)
+    assert faults_of("program", typed(yaml.load(text, Loader=yaml.BaseLoader)))
+    with pytest.raises(InputError):
+        read_program(text, "described.yaml")
 
 
 def test_unknown_schema_is_an_input_error():
