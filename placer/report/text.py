@@ -162,7 +162,7 @@ def _calls(page: Page, plan: Plan) -> None:
     page.heading(f"Calls ({len(calls)})")
     if len(calls) <= MOST_CALLS:
         rows = [
-            (step.name, step.recipe, _workspace(step), _when((step,)))
+            (_call(step), step.recipe, _workspace(step), _when((step,)))
             for step in sorted(calls, key=lambda s: (s.start, s.index))
         ]
         page.table(("call", "<recipe", "<workspace", "planned"), rows, drop=(3,))
@@ -180,6 +180,10 @@ def _calls(page: Page, plan: Plan) -> None:
         left = ordered[MOST_CALLS:]
         calls_left = sum(len(steps) for _, steps in left)
         page.line(f" and {count(calls_left, 'call')} of {len(left)} more sorts")
+
+
+def _call(step: Step) -> str:
+    return f"{step.name}, line {step.line}" if step.line else step.name
 
 
 def _workspace(step: Step) -> str:

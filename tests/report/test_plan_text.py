@@ -35,10 +35,10 @@ no workspace        11     17    31 us    39 %     61 %    52 %    no
    (mcx)
 
 Calls (2)
-call  recipe            workspace                        planned
-----------------------------------------------------------------
-mcx   clean-ladder      clean $12 $13 $14         0.025 - 6.2 us
-mcz   borrowed-v-chain  borrowed $9 of m[1], $15    6.24 - 11 us
+call          recipe            workspace                        planned
+------------------------------------------------------------------------
+mcx, line 8   clean-ladder      clean $12 $13 $14         0.025 - 6.2 us
+mcz, line 10  borrowed-v-chain  borrowed $9 of m[1], $15    6.24 - 11 us
 
 Where the error comes from (21.1 % expected)
  two-qubit gates       40.6 %  ###################
