@@ -47,9 +47,10 @@ _FIRST_ROOM = 256
 class Setting:
     """How the trial route looks ahead.
 
-    `lookahead` is the size of the extended set, `weight` what it counts against the
-    front layer, `decay` the surcharge on sites just used, `care` in [0, 1] how much
-    link errors count against the mere number of links.
+    `lookahead` is the size of the extended set per eight gates of the front layer,
+    `weight` what it counts against the front layer, `decay` the surcharge on sites
+    just used, `care` in [0, 1] how much link errors count against the mere number of
+    links.
     """
 
     lookahead: int = 20
@@ -146,8 +147,8 @@ def route(
     patience = 10 + 2 * int(finite.max(initial=0))
     while True:
         status = advance(
-            placed.flow, gates, reach, state, swaps, setting.weight, setting.decay,
-            patience,
+            placed.flow, gates, reach, state, swaps, setting.lookahead, setting.weight,
+            setting.decay, patience,
         )  # fmt: skip
         if status == DONE:
             break

@@ -29,6 +29,7 @@ SWAPS, FRONT, OLDEST, MARK, QUEUED = range(5)
 swaps up to the last gate, gates to test."""
 _AHEAD, _LAST_RESET, _STAMP, _STARTED, _DIRTY = range(5, 10)
 _RESET_EVERY = 5  # swaps after which the surcharges on sites are forgotten
+_NARROW = 8  # gates in the front up to which `lookahead` is meant
 _EQUAL = 1e-9  # scores nearer than this are equal, and lots are drawn
 
 
@@ -73,6 +74,7 @@ class State(NamedTuple):
     is_done: Flags
     gap_of_gate: Ints
     ahead: Ints  # the extended set
+    spare: Ints  # the extended set before
     head: Ints  # first place of a token in the extended set, or -1
     chain: Ints  # next place of the same token
     seen: Ints
@@ -87,6 +89,8 @@ def open_state(flow: Flow, links: int, sites: int, lookahead: int, seed: int) ->
     """Return the state before the first operation."""
     gates = int((flow.code >= TWO).sum())
     own = np.arange(sites, dtype=np.int64)
+    # One gate may add two, so the extended set can exceed its limit by one.
+    room = lookahead * max(_NARROW, sites // 2) // _NARROW + 1
     seeded = np.random.SeedSequence(seed).generate_state(1, np.uint64)
     return State(
         tally=np.zeros(10, dtype=np.int64),
@@ -100,9 +104,10 @@ def open_state(flow: Flow, links: int, sites: int, lookahead: int, seed: int) ->
         queue=np.empty(2 * sites + 4, dtype=np.int64),
         is_done=np.zeros(gates + 1, dtype=np.bool_),
         gap_of_gate=np.full(gates, -1, dtype=np.int64),
-        ahead=np.empty(lookahead, dtype=np.int64),
+        ahead=np.empty(room, dtype=np.int64),
+        spare=np.empty(room, dtype=np.int64),
         head=np.full(sites, -1, dtype=np.int64),
-        chain=np.full(2 * lookahead, -1, dtype=np.int64),
+        chain=np.full(2 * room, -1, dtype=np.int64),
         seen=np.full(gates, -1, dtype=np.int64),
         surcharge=np.ones(sites, dtype=np.float64),
         gain=np.zeros((links, 2), dtype=np.float64),
@@ -197,15 +202,17 @@ def _leave_front(state: State, gate: int) -> None:
 
 
 @inner
-def _look_ahead(gates: Gates, state: State) -> None:
+def _look_ahead(gates: Gates, state: State, lookahead: int) -> None:
     """Collect the extended set: the gates nearest behind the front layer."""
     tally = state.tally
-    limit = len(state.ahead)
-    for k in range(tally[_AHEAD]):
+    old = tally[_AHEAD]
+    for k in range(old):
         gate = state.ahead[k]
+        state.spare[k] = gate
         state.head[gates.parts[gate, 0]] = -1
         state.head[gates.parts[gate, 1]] = -1
-        _touch_gate(gates, state, gate)
+    # A wide front needs more to look at, or most of its tokens are moved blindly.
+    limit = lookahead * max(_NARROW, tally[FRONT]) // _NARROW
     tally[_AHEAD] = 0
     tally[_STAMP] += 1
     at = 0
@@ -215,11 +222,11 @@ def _look_ahead(gates: Gates, state: State) -> None:
         at += 1
         for side in range(2):
             after = gates.following[gate, side]
-            if after < 0 or state.seen[after] == tally[_STAMP]:
-                continue
-            state.seen[after] = tally[_STAMP]
-            if tally[_AHEAD] < limit:
+            if after >= 0 and state.seen[after] != tally[_STAMP]:
                 _append_ahead(gates, state, after)
+    for k in range(old):
+        if state.seen[state.spare[k]] != tally[_STAMP]:
+            _touch_gate(gates, state, state.spare[k])
 
 
 @inner
@@ -230,7 +237,9 @@ def _append_ahead(gates: Gates, state: State, gate: int) -> None:
         token = gates.parts[gate, side]
         state.chain[2 * number + side] = state.head[token]
         state.head[token] = 2 * number + side
-    _touch_gate(gates, state, gate)
+    if state.seen[gate] != state.tally[_STAMP] - 1:
+        _touch_gate(gates, state, gate)
+    state.seen[gate] = state.tally[_STAMP]
     state.tally[_AHEAD] += 1
 
 
@@ -385,8 +394,8 @@ def _swap_one(
 
 @compiled
 def advance(
-    flow: Flow, gates: Gates, reach: Reach, state: State, swaps: Ints, weight: float,
-    decay: float, patience: int,
+    flow: Flow, gates: Gates, reach: Reach, state: State, swaps: Ints, lookahead: int,
+    weight: float, decay: float, patience: int,
 ) -> int:  # fmt: skip
     """Search until all gates are done, the room for swaps is used up, or no way.
 
@@ -397,13 +406,13 @@ def advance(
     if tally[_STARTED] == 0:
         tally[_STARTED] = 1
         _settle(flow, gates, state, begin(state.waits, state.free))
-        _look_ahead(gates, state)
+        _look_ahead(gates, state, lookahead)
     while True:
         if _run_gates(flow, gates, reach, state):
             tally[MARK] = tally[SWAPS]
             tally[_LAST_RESET] = tally[SWAPS]
             state.surcharge[:] = 1.0
-            _look_ahead(gates, state)
+            _look_ahead(gates, state, lookahead)
         if tally[FRONT] == 0:
             return DONE
         if tally[SWAPS] == len(swaps):
