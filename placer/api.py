@@ -15,7 +15,8 @@ from placer.planner.assemble import plan_of
 from placer.planner.loop import Effort, run
 from placer.problem import Goal, make_problem
 from placer.program.model import Program
-from placer.program.read import load_program
+from placer.program.read import load_program, read_program
+from placer.report.sorts import demo_programs
 from placer.version import VERSION
 
 if TYPE_CHECKING:
@@ -69,7 +70,7 @@ def plan(
     if not isinstance(device, Device):
         device = find_device(str(device))
     if not isinstance(program, Program):
-        program = load_program(str(program), open_inputs=open_inputs)
+        program = find_program(str(program), open_inputs=open_inputs)
     if isinstance(budget, float | int):
         budget = dataclasses.replace(device.budget, share=float(budget))
     problem = make_problem(device, program, budget=budget, goal=goal, only=only)
@@ -83,6 +84,23 @@ def plan(
     if verified.notes:
         result = dataclasses.replace(result, notes=tuple(verified.notes))
     return result
+
+
+def find_program(name: str, *, open_inputs: bool = False) -> Program:
+    """Return the program of a path, or of the name of a demo program.
+
+    Raises
+    ------
+    InputError
+        If it cannot be read or has faults.
+    """
+    demos = demo_programs()
+    if name in demos and not Path(name).exists():
+        path = demos[name]
+        text = path.read_text(encoding="utf-8")
+        # The plan names the demo by its file name: no machine path travels with it.
+        return read_program(text, path.name, open_inputs=open_inputs)
+    return load_program(name, open_inputs=open_inputs)
 
 
 def check(text: str, path: str = "plan") -> CheckResult:

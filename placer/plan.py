@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING, Any, Literal
 
 from placer.device.model import Budget
 from placer.errors import InputError, Place
+from placer.program.model import CALL_KINDS
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -220,7 +221,7 @@ class Plan:
     @property
     def calls(self) -> tuple[Step, ...]:
         """The steps that recipes competed for."""
-        return tuple(s for s in self.steps if s.kind in ("mcx", "mcz", "mcp", "and"))
+        return tuple(s for s in self.steps if s.kind in CALL_KINDS)
 
     @property
     def hash(self) -> str:
@@ -237,8 +238,10 @@ def to_json(plan: Plan) -> str:
     bound = data["bound"]
     bound["gap"] = plan.bound.gap
     steps = data.pop("steps")
-    calls = [s for s in steps if s["kind"] in ("mcx", "mcz", "mcp", "and")]
-    others = [[s["index"], s["start"], s["end"]] for s in steps if s not in calls]
+    calls = [s for s in steps if s["kind"] in CALL_KINDS]
+    others = [
+        [s["index"], s["start"], s["end"]] for s in steps if s["kind"] not in CALL_KINDS
+    ]
     head = {"format": FORMAT, **data}
     head["calls"] = calls
     head["others"] = others

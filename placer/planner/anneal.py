@@ -10,9 +10,9 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-import numba
 import numpy as np
 
+from placer.compiled import compiled, inner
 from placer.planner.placement import Instance, Placement, duration, local_sites
 from placer.planner.placement import schedule as reschedule
 
@@ -188,7 +188,7 @@ def anneal(
     return result
 
 
-@numba.njit(cache=True)
+@inner
 def _next(state: Any) -> Any:
     # xorshift64*: small, seedable, the same on every platform.
     x = state[0]
@@ -199,17 +199,17 @@ def _next(state: Any) -> Any:
     return x * np.uint64(2685821657736338717)
 
 
-@numba.njit(cache=True)
+@inner
 def _below(state: Any, limit: Any) -> Any:
     return np.int64((_next(state) >> np.uint64(33)) % np.uint64(limit))
 
 
-@numba.njit(cache=True)
+@inner
 def _unit(state: Any) -> Any:
     return np.float64(_next(state) >> np.uint64(11)) / 9007199254740992.0
 
 
-@numba.njit(cache=True)
+@inner
 def _token_cost(t: Any, site: Any, place: Any, rows: Any, prices: Any) -> Any:
     offsets, others, weights, kinds, flipped, alone = rows
     total = alone[t, site]
@@ -222,7 +222,7 @@ def _token_cost(t: Any, site: Any, place: Any, rows: Any, prices: Any) -> Any:
     return total
 
 
-@numba.njit(cache=True)
+@inner
 def _change(a: Any, b: Any, place: Any, rows: Any, prices: Any) -> Any:
     """Exchange the sites of two tokens and return the change of cost."""
     source, target = place[a], place[b]
@@ -234,7 +234,7 @@ def _change(a: Any, b: Any, place: Any, rows: Any, prices: Any) -> Any:
     return after + _token_cost(b, source, place, rows, prices) - before
 
 
-@numba.njit(cache=True)
+@inner
 def _propose(state: Any, place: Any, rows: Any, links: Any, active: Any) -> Any:
     """Return a token and a site: mostly one beside a token that it meets."""
     offsets, others = rows[0], rows[1]
@@ -249,7 +249,7 @@ def _propose(state: Any, place: Any, rows: Any, links: Any, active: Any) -> Any:
     return a, usable[_below(state, usable.shape[0])]
 
 
-@numba.njit(cache=True)
+@compiled
 def _anneal(
     place: Any,
     rows: Any,

@@ -54,8 +54,27 @@ def plan_of(
         ),
         policies=tuple(_row(p, outcome) for p in outcome.policies),
         verdict=verdict_of(judged.figures, budget, nearest),
-        notes=notes,
+        notes=(*_why(outcome), *notes),
     )
+
+
+def _why(outcome: Outcome) -> tuple[str, ...]:
+    """Say how the chosen plan stands against every fixed policy, in the plan itself."""
+    budget = outcome.instance.problem.budget
+    own = outcome.judged.figures.costs.total
+    notes = []
+    for policy in outcome.policies:
+        if policy.judged is None:
+            notes.append(f"{policy.policy} workspace everywhere: {policy.reason}")
+            continue
+        cost = policy.judged.figures.costs.total
+        difference = (cost - own) / own if own else 0.0
+        side = "more" if difference >= 0 else "less"
+        text = f"{abs(difference):.0%} {side} expected error than this plan"
+        if overrun(policy.judged.figures, budget) > 0:
+            text += ", does not fit"
+        notes.append(f"{policy.policy} workspace everywhere: {text}")
+    return tuple(notes)
 
 
 def _steps(outcome: Outcome) -> tuple[Step, ...]:

@@ -10,6 +10,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Literal
 
+import numpy as np
+
 from placer.errors import InternalError, NoPlan, OutOfTime
 from placer.plan import POLICIES
 from placer.planner import bounds
@@ -40,7 +42,7 @@ class Work:
     decodes over all its rounds, `gates` the two-body gates that optional routes may
     have together, `routed` the candidates judged per search, `windows`, `flips`,
     `repairs` and `routes` (per final candidate) plain counts, `joint` CP-SAT's
-    deterministic time.
+    deterministic time, `joint_size` the largest joint model (about its clauses).
     """
 
     search: Amount
@@ -52,6 +54,7 @@ class Work:
     flips: int
     repairs: int
     joint: float
+    joint_size: int
     routes: int
 
 
@@ -66,6 +69,7 @@ WORK: dict[str, Work] = {
         flips=0,
         repairs=2,
         joint=0.5,
+        joint_size=60_000,
         routes=1,
     ),
     "normal": Work(
@@ -78,6 +82,7 @@ WORK: dict[str, Work] = {
         flips=10,
         repairs=4,
         joint=4.0,
+        joint_size=250_000,
         routes=3,
     ),
     "deep": Work(
@@ -90,6 +95,7 @@ WORK: dict[str, Work] = {
         flips=60,
         repairs=12,
         joint=120.0,
+        joint_size=3_000_000,
         routes=8,
     ),
 }
@@ -264,7 +270,7 @@ class _Engine:
 
     def solve_joint(self) -> None:
         """Prove the least placement cost where the problem is small enough."""
-        if not _is_small(self.instance):
+        if _joint_size(self.instance) > self.work.joint_size:
             return
         self.progress("joint model: prove")
         choice: Open = everything(self.instance)
@@ -349,7 +355,7 @@ class _Engine:
             late = set(current.late)
             used = current.placement.recipes
             recipes = tuple(
-                tuple(c for c in row if i not in late or c != used[i]) or row
+                self._shorter(i, row, used[i], number) if i in late else row
                 for i, row in enumerate(recipes)
             )
             kept = tuple(
@@ -366,6 +372,16 @@ class _Engine:
             if not found:
                 return
             current = self._route(found[0].placement, is_needed=number < 2)
+
+    def _shorter(
+        self, step: int, row: tuple[int, ...], used: int, number: int
+    ) -> tuple[int, ...]:
+        """Return a late step's recipes without the one in use, later without slots."""
+        others = tuple(c for c in row if c != used)
+        if number > 0:
+            profiles = self.instance.profiles[step]
+            others = tuple(c for c in row if not profiles[c].built.slots)
+        return others or row
 
     def _classes(self) -> list[tuple[list[int], int]]:
         """Return (steps of one size, recipe) to try, the largest classes first."""
@@ -432,14 +448,14 @@ class _Engine:
         )
 
 
-def _is_small(instance: Instance) -> bool:
-    calls = sum(1 for row in instance.profiles if len(row) > 1)
-    return (
-        calls <= 8
-        and instance.steps <= 24
-        and len(instance.wires) <= 9
-        and len(instance.usable) <= 27
-    )
+def _joint_size(instance: Instance) -> int:
+    """Return about how many clauses the joint model has."""
+    sites = len(instance.usable)
+    usable = list(instance.usable)
+    prices = instance.tables.pair_cost((False, False, False))[usable][:, usable]
+    levels = len(np.unique(prices))
+    meetings = sum(len(profile.pairs) for row in instance.profiles for profile in row)
+    return meetings * sites * levels
 
 
 def _has_hard_limits(instance: Instance) -> bool:

@@ -51,7 +51,7 @@ def search(
     links = neighbours_of(instance)
     for number, scale in enumerate(amount.scales):
         taste = Taste(recipes, move_scale=scale)
-        sites = _first_sites(instance)
+        sites = _first_sites(instance, recipes)
         earlier: Placement | None = None
         if starts:
             earlier = starts[number % len(starts)]
@@ -96,12 +96,24 @@ def _keep(
         return
 
 
-def _first_sites(instance: Instance) -> list[int]:
-    """Return a compact first guess: wires in order of use, sites in order of reach."""
-    hop = instance.tables.hop
+def _first_sites(instance: Instance, recipes: Choice) -> list[int]:
+    """Return a compact first guess: wires in order of use, sites in order of reach.
+
+    Where a step can only be done in level 2, sites that offer it come first.
+    """
+    tables = instance.tables
+    needs_level2 = any(
+        all(instance.profiles[i][c].built.level2_wires for c in row)
+        for i, row in enumerate(recipes)
+    )
     usable = instance.usable
-    centre = min(usable, key=lambda p: (int(hop[p, list(usable)].sum()), p))
-    near = sorted(usable, key=lambda p: (int(hop[centre, p]), p))
+
+    def lacks(p: int) -> bool:
+        return needs_level2 and int(tables.rate2[p]) < 0
+
+    inside = [p for p in usable if not lacks(p)] or list(usable)
+    centre = min(inside, key=lambda p: (int(tables.hop[p, inside].sum()), p))
+    near = sorted(usable, key=lambda p: (lacks(p), int(tables.hop[centre, p]), p))
     order = sorted(
         range(len(instance.wires)),
         key=lambda w: (instance.wires[w].is_workspace, -len(instance.wires[w].uses), w),
