@@ -176,7 +176,8 @@ class _Replay:
         before = self.bits[target]
         after = before ^ product
         wrong = after if operation.inverse else before
-        if wrong.any():
+        if wrong.any() and target not in self.refused:
+            self.refused.add(target)
             name = self.program.wire_names[target]
             what = (
                 f"'and' finds {name} in 1, it must be in |0>"

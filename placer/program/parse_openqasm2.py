@@ -52,8 +52,8 @@ _NOT_IN_2 = {
     "negctrl": "gate modifiers",
     "inv": "gate modifiers",
     "pow": "gate modifiers",
-    "qubit": "the word 'qubit'",
-    "bit": "the word 'bit'",
+    "qubit": "word 'qubit'",
+    "bit": "word 'bit'",
     "let": "aliases",
     "const": "constants",
     "for": "loops",
@@ -202,6 +202,8 @@ def _gate_definition(reader: Reader, notes: Annotations) -> Statement:
         if token.text == "barrier":
             body.append(_barrier(reader, ()))
             continue
+        if token.kind == "end":
+            reader.expect("}", f"after the body of gate '{name.text}'")
         if token.kind != "name" or token.text in KEYWORDS:
             reader.fail(token, f"{shown(token)} cannot stand in the body of a gate")
         body.append(_gate_call(reader, ()))

@@ -1,0 +1,6 @@
+// expect: the character '?' does not belong here expect-line: 6
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+x q[0]?;

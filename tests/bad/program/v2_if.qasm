@@ -1,0 +1,6 @@
+// expect: 'if' is not supported expect-line: 6
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+if(c==1) x q[0];

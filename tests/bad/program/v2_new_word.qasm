@@ -1,0 +1,6 @@
+// expect: declare 'OPENQASM 3;' in the first line expect-line: 6
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+qubit r;

@@ -1,0 +1,6 @@
+// expect: found the end of the text expect-line: 7
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+gate g a { x a;

@@ -1,0 +1,6 @@
+// expect: the gate 'foo' is not declared expect-line: 6
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+foo q[0];

@@ -1,0 +1,6 @@
+// expect: 'r' is not declared expect-line: 6
+OPENQASM 2.0;
+include "qelib1.inc";
+qreg q[4];
+creg c[4];
+x r[0];

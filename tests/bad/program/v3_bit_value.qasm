@@ -1,0 +1,6 @@
+// expect: a first value of classical bits is not supported expect-line: 6
+OPENQASM 3.0;
+include "stdgates.inc";
+qubit[4] q;
+bit[4] c;
+bit[2] d = "01";

@@ -1,0 +1,6 @@
+// expect: 'if' is not supported expect-line: 6
+OPENQASM 3.0;
+include "stdgates.inc";
+qubit[4] q;
+bit[4] c;
+if (c[0]) { x q[0]; }

@@ -1,0 +1,6 @@
+// expect: physical qubits such as '$3' are not supported expect-line: 6
+OPENQASM 3.0;
+include "stdgates.inc";
+qubit[4] q;
+bit[4] c;
+x $3;
