@@ -41,6 +41,7 @@ if TYPE_CHECKING:
 
 _FAR = 1e9
 _FIRST_ROOM = 256
+_TRIES = 4
 
 
 @dataclass(frozen=True, slots=True)
@@ -139,6 +140,22 @@ def route(
     """
     gates, masks = _gates(placed)
     reach = _reach(tables, masks, setting.care, _crowd(placed))
+    # What is in level 2 can bar the way for good where few sites have it: try again.
+    for attempt in range(1 if len(masks) == 1 else _TRIES):
+        found = _one_route(placed, tables, gates, reach, setting, (seed, attempt))
+        if found is not None:
+            return found
+    return None
+
+
+def _one_route(
+    placed: PlacedCircuit,
+    tables: Tables,
+    gates: Gates,
+    reach: Reach,
+    setting: Setting,
+    seed: tuple[int, int],
+) -> RouteResult | None:
     state = open_state(
         placed.flow, len(tables.neighbours), placed.sites, setting.lookahead, seed
     )

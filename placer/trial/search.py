@@ -85,13 +85,17 @@ class State(NamedTuple):
     random: NDArray[np.uint64]
 
 
-def open_state(flow: Flow, links: int, sites: int, lookahead: int, seed: int) -> State:
+def open_state(
+    flow: Flow, links: int, sites: int, lookahead: int, seed: tuple[int, ...]
+) -> State:
     """Return the state before the first operation."""
     gates = int((flow.code >= TWO).sum())
     own = np.arange(sites, dtype=np.int64)
     # One gate may add two, so the extended set can exceed its limit by one.
     room = lookahead * max(_NARROW, sites // 2) // _NARROW + 1
-    seeded = np.random.SeedSequence(seed).generate_state(1, np.uint64)
+    seeded = np.random.SeedSequence([number % 2**32 for number in seed]).generate_state(
+        1, np.uint64
+    )
     return State(
         tally=np.zeros(10, dtype=np.int64),
         at=own,
