@@ -92,7 +92,7 @@ def _ends(instance: Instance, placement: Placement) -> list[int]:
 def _add_alone(
     alone: NDArray[np.float64],
     instance: Instance,
-    profile: object,
+    profile: Profile,
     where: Sequence[int],
 ) -> None:
     tables = instance.tables

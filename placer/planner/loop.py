@@ -73,17 +73,17 @@ WORK: dict[str, Work] = {
         routes=1,
     ),
     "normal": Work(
-        search=Amount(5, 120_000, (1.0, 0.4, 2.5)),
-        policy=Amount(3, 80_000, (1.0,)),
+        search=Amount(5, 120_000, (1.0, 0.4, 2.5, 1.0, 0.4, 2.5)),
+        policy=Amount(3, 80_000, (1.0, 0.4)),
         steps=2_400,
         gates=120_000,
-        routed=6,
+        routed=20,
         windows=4,
-        flips=10,
+        flips=16,
         repairs=4,
         joint=4.0,
         joint_size=250_000,
-        routes=3,
+        routes=6,
     ),
     "deep": Work(
         search=Amount(8, 600_000, (1.0, 0.4, 2.5, 0.2)),
@@ -180,14 +180,17 @@ class _Engine:
         self.is_impossible = False
         self.gates_left = work.gates
 
-    def key(self, judged: Judged) -> tuple[float, int, int, object]:
-        """Return the rank of a judged placement; smaller is better."""
+    def key(self, judged: Judged) -> tuple[bool, int, int, object]:
+        """Return the rank of a judged placement; smaller is better.
+
+        What fits comes first, then the least expected error.
+        """
         placement = judged.placement
         tie = (placement.sites, placement.recipes, placement.slot_sites)
         if self.instance.problem.goal == "estimate":
-            return (0.0, judged.estimate, judged.figures.costs.total, tie)
-        over = overrun(judged.figures, self.instance.problem.budget)
-        return (over, judged.figures.costs.total, judged.estimate, tie)
+            return (False, judged.estimate, judged.figures.costs.total, tie)
+        misses = overrun(judged.figures, self.instance.problem.budget) > 0
+        return (misses, judged.figures.costs.total, judged.estimate, tie)
 
     def best(self) -> Judged | None:
         """Return the best of all judged placements."""
@@ -237,7 +240,7 @@ class _Engine:
         if not found:
             return PolicyOutcome(name, "not enough free sites at some call", None)
         self.estimates += [c.placement for c in found[:1]]
-        judged = self._take([c.placement for c in found], 2)
+        judged = self._take([c.placement for c in found], 4)
         if not judged:
             return PolicyOutcome(name, "no route exists", None)
         return PolicyOutcome(name, "", min(judged, key=self.key))
