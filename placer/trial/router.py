@@ -57,7 +57,7 @@ class Setting:
     lookahead: int = 20
     weight: float = 0.5
     decay: float = 0.001
-    care: float = 0.5
+    care: float = 0.25
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -87,18 +87,20 @@ class RouteResult:
     @property
     def gaps(self) -> tuple[tuple[tuple[int, int], ...], ...]:
         """Runs of gates between the swaps, as `plan.Route` holds them."""
-        gaps: list[tuple[tuple[int, int], ...]] = []
         order = np.argsort(self.gap_of_gate, kind="stable")
-        cuts = np.searchsorted(self.gap_of_gate[order], np.arange(1, self.count + 1))
-        for chunk in np.split(order, cuts):
-            if len(chunk) == 0:
-                gaps.append(())
-                continue
-            breaks = np.flatnonzero(np.diff(chunk) != 1)
-            firsts = chunk[np.concatenate(([0], breaks + 1))].tolist()
-            lasts = chunk[np.concatenate((breaks, [len(chunk) - 1]))].tolist()
-            gaps.append(tuple(zip(firsts, lasts, strict=True)))
-        return tuple(gaps)
+        gap = self.gap_of_gate[order]
+        breaks = np.flatnonzero((np.diff(order) != 1) | (np.diff(gap) != 0))
+        firsts = np.concatenate(([0], breaks + 1))[: len(order)]
+        lasts = np.concatenate((breaks, [len(order) - 1]))[: len(order)]
+        runs: list[list[tuple[int, int]]] = [[] for _ in range(self.count + 1)]
+        for at, first, last in zip(
+            gap[firsts].tolist(),
+            order[firsts].tolist(),
+            order[lasts].tolist(),
+            strict=True,
+        ):
+            runs[at].append((first, last))
+        return tuple(map(tuple, runs))
 
     def as_route(self, held_out: int = 0, expected_swaps: float = -1.0) -> Route:
         """Return the route as the plan holds it."""
