@@ -130,7 +130,10 @@ def _scopes(draft: Draft, steps: Sequence[Step]) -> tuple[Scope, ...]:
     result = []
     for scope in draft.scopes:
         spans = []
-        end = 0
+        starts = [
+            span[0] for (number, _), span in ranges.items() if number == scope.number
+        ]
+        end = min(starts, default=0)
         for part in ("compute", "body", "cleanup"):
             found = ranges.get((scope.number, part), [end, end])
             spans.append((found[0], found[1]))

@@ -98,13 +98,29 @@ class _Replay:
         free = [
             wire for wire in used if self.program.register_at(wire).start == "unknown"
         ]
-        columns = _all_inputs(len(free)) if len(free) <= MOST_FREE else None
+        few = len(free) <= MOST_FREE
+        columns = _all_inputs(len(free)) if few else self._some_inputs(len(free))
         zero = np.zeros(_WORDS, dtype=np.uint64)
         self.bits = [zero for _ in self.program.wire_names]
         for number, wire in enumerate(free):
-            column = columns[number] if columns is not None else self._any()
-            self.inputs[wire] = column
-            self.bits[wire] = column
+            self.inputs[wire] = columns[number]
+            self.bits[wire] = columns[number]
+
+    def _some_inputs(self, count: int) -> list[Words]:
+        """Return random columns; half of the words hold mostly ones or mostly zeros.
+
+        A gate with many controls acts on so few inputs that even ones and zeros would
+        hardly ever hit one.
+        """
+        words = np.arange(_WORDS)
+        depth = np.where(words < _WORDS // 2, 0, 1 + words // 2 % 6)
+        columns = []
+        for _ in range(count):
+            layers = self.random.integers(0, 2**64, size=(7, _WORDS), dtype=np.uint64)
+            ones = np.bitwise_or.accumulate(layers)[depth, words]
+            zeros = np.bitwise_and.accumulate(layers)[depth, words]
+            columns.append(np.where(words % 2, ones, zeros))
+        return columns
 
     def _any(self) -> Words:
         return self.random.integers(0, 2**64, size=_WORDS, dtype=np.uint64)

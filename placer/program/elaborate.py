@@ -162,10 +162,13 @@ class Elaboration:
                 f"only {' and '.join(INCLUDE_FILES)} need no file of their own",
             ) from error
         self.draft.sources.append(text)
+        name = str(Path(statement.place.file).parent / statement.file)
+        parsed = self.parse(text, name)
         self.files.append(path)
-        folder = Path(statement.place.file).parent
-        self._statements(self.parse(text, str(folder / statement.file)).statements)
-        self.files.pop()
+        try:
+            self._statements(parsed.statements)
+        finally:
+            self.files.pop()
 
     def qubits(self, statement: QubitDeclaration) -> None:
         """Declare a quantum register."""

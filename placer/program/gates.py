@@ -176,17 +176,18 @@ class Gates:
             raise InputError.at(
                 call.place,
                 "parameter-count",
-                f"the gate '{call.name}' takes {gate.params} parameters, found "
-                f"{len(call.params)}",
+                f"the gate '{call.name}' takes {_counted(gate.params, 'parameter')}, "
+                f"found {len(call.params)}",
             )
         added = sum(count for kind, count in changes if kind in ("ctrl", "negctrl"))
         if len(call.operands) != gate.wires + added:
-            controls = f" and {added} controls" if added else ""
+            width = _counted(gate.wires, "qubit")
+            controls = f" and {_counted(added, 'control')}" if added else ""
             raise InputError.at(
                 call.place,
                 "operand-count",
-                f"the gate '{call.name}' acts on {gate.wires} qubits{controls}, found "
-                f"{len(call.operands)} operands",
+                f"the gate '{call.name}' acts on {width}{controls}, "
+                f"found {_counted(len(call.operands), 'operand')}",
             )
 
     def values(self, call: GateCall) -> tuple[float, ...]:
@@ -371,6 +372,10 @@ def _operand_faults(
             what = f"'{name}' stands twice in one statement"
             yield Fault(operand.place, "same-qubit", what)
         seen.add(name)
+
+
+def _counted(count: int, word: str) -> str:
+    return f"{count} {word}" if count == 1 else f"{count} {word}s"
 
 
 def _calls(body: Sequence[Statement]) -> Iterator[GateCall]:

@@ -144,7 +144,7 @@ def _statement(reader: Reader, count: int) -> Statement:
     reader.notes.clear()
     if token.kind != "name":
         reader.fail(token, f"expected a statement, found {shown(token)}")
-    if token.text in _NOT_IN_2:
+    if token.text in _NOT_IN_2 and token.text not in reader.gates:
         reader.fail(
             token,
             f"OpenQASM 2 has no {_NOT_IN_2[token.text]}",
@@ -190,6 +190,7 @@ def _register(reader: Reader, notes: Annotations) -> Statement:
 def _gate_definition(reader: Reader, notes: Annotations) -> Statement:
     reader.take()
     name = _identifier(reader, "the name of a gate")
+    reader.gates.add(name.text)
     params: list[str] = []
     if reader.accept("(") and not reader.accept(")"):
         params = _names(reader, "the name of a parameter")

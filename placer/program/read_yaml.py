@@ -6,7 +6,7 @@ workspace are verified in `claims`.
 
 from __future__ import annotations
 
-from placer.errors import Fault, InputError
+from placer.errors import Fault, InputError, Place
 from placer.program.assemble import assemble
 from placer.program.claims import check_claims
 from placer.program.draft import Draft
@@ -36,7 +36,8 @@ def read_yaml(text: str, path: str, *, open_inputs: bool = False) -> Program:
     owners: dict[int, int] = {}
     if "registers" in entries:
         for key, node in (entries["registers"].mapping(faults) or {}).items():
-            wires = _register(key, node, draft, faults, open_inputs=open_inputs)
+            place = entries["registers"].key_place(key)
+            wires = _register(key, node, place, draft, faults, open_inputs=open_inputs)
             names[key] = wires
             if draft.registers[-1].is_workspace:
                 owners.update(dict.fromkeys(wires, -1))
@@ -76,7 +77,13 @@ def _root(text: str, path: str) -> Node:
 
 
 def _register(
-    name: str, node: Node, draft: Draft, faults: Faults, *, open_inputs: bool
+    name: str,
+    node: Node,
+    place: Place,
+    draft: Draft,
+    faults: Faults,
+    *,
+    open_inputs: bool,
 ) -> tuple[int, ...]:
     """Read a register: its width alone, or a mapping."""
     start: Start = "unknown"
@@ -106,7 +113,7 @@ def _register(
         name,
         width,
         start,
-        node.place,
+        place,
         is_workspace=is_workspace,
         is_lendable=is_lendable,
     )

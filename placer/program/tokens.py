@@ -60,13 +60,18 @@ class Places:
 
 
 class Reader:
-    """A position in a text, with one token of look-ahead."""
+    """A position in a text, with one token of look-ahead.
+
+    `notes` are annotations that wait for their statement, `gates` the gates that the
+    text has declared so far.
+    """
 
     def __init__(self, text: str, file: str) -> None:
         self.text = text
         self.places = Places(text, file)
         self.position = 0
         self.notes: list[Annotation] = []
+        self.gates: set[str] = set()
         self._ahead: Token | None = None
 
     def peek(self) -> Token:

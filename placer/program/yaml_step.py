@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 from placer.errors import Fault, InputError, Place, did_you_mean
 from placer.program.draft import Draft, DraftScope, Part, Step
@@ -70,6 +70,9 @@ class Steps:
             return
         key = item.entries[0][0]
         value = entries[key.value]
+        if value.is_mapping:
+            # The step stands where its key does, not where its first detail does.
+            value = replace(value, place=key.place)
         reader = _READERS.get(key.value)
         if reader is not None:
             reader(self, value)

@@ -111,6 +111,16 @@ def test_many_wires_are_sampled():
         read_program(text, "p.qasm")
 
 
+@pytest.mark.parametrize("controls", [16, 24])
+def test_many_controls_are_hit(controls):
+    wires = ", ".join(f"b[{i}]" for i in range(controls))
+    for modifier in ("ctrl", "negctrl"):
+        body = f"qubit[{controls}] b;\n{modifier}({controls}) @ x {wires}, w[0];"
+        digit = "1" if modifier == "ctrl" else "0"
+        with pytest.raises(InputError, match=f"b = 0b{digit * controls} the wire"):
+            read(body)
+
+
 def test_known_zero_inputs_count():
     body = "reset a; ccx a[0], a[1], w[0];"
     assert read(body).registers[0].start == "zero"

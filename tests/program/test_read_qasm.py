@@ -58,6 +58,10 @@ class TestVersions:
         program = read(f"{V2}qreg in[1];\nqreg input[1];\ncx in[0],input[0];")
         assert flat(program) == ["cx in[0] input[0]"]
 
+    def test_words_of_version_3_are_gates_in_version_2(self):
+        text = "gate inv a { x a; }\nqreg q[1];\ninv q[0];\nqreg let[1];\ninv let[0];"
+        assert flat(read(V2 + text)) == ["x q[0]", "x let[0]"]
+
     def test_carriage_returns_and_byte_order_mark(self):
         text = f"\ufeff{V2}qreg q[1];\nh q[0];\n".replace("\n", "\r\n")
         assert flat(read(text)) == ["h q[0]"]

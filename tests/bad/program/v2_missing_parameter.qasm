@@ -1,4 +1,4 @@
-// expect: takes 1 parameters, found 0 expect-line: 6
+// expect: takes 1 parameter, found 0 expect-line: 6
 OPENQASM 2.0;
 include "qelib1.inc";
 qreg q[4];

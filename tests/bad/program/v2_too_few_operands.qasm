@@ -1,4 +1,4 @@
-// expect: acts on 2 qubits, found 1 operands expect-line: 6
+// expect: acts on 2 qubits, found 1 operand expect-line: 6
 OPENQASM 2.0;
 include "qelib1.inc";
 qreg q[4];

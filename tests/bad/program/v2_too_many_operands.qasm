@@ -1,4 +1,4 @@
-// expect: acts on 1 qubits, found 2 operands expect-line: 6
+// expect: acts on 1 qubit, found 2 operands expect-line: 6
 OPENQASM 2.0;
 include "qelib1.inc";
 qreg q[4];

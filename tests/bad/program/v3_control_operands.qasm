@@ -1,4 +1,4 @@
-// expect: acts on 1 qubits and 2 controls, found 2 operands expect-line: 6
+// expect: acts on 1 qubit and 2 controls, found 2 operands expect-line: 6
 OPENQASM 3.0;
 include "stdgates.inc";
 qubit[4] q;
