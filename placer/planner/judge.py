@@ -18,13 +18,14 @@ if TYPE_CHECKING:
     from placer.placed import PlacedCircuit
     from placer.plan import Figures, Route
     from placer.planner.placement import Instance, Placement
+    from placer.tables import Tables
 
 # The first setting is the everyday one; the others look further, or less far.
 SETTINGS = (
     Setting(),
     Setting(lookahead=40, weight=0.4),
     Setting(lookahead=10, weight=0.6, decay=0.01),
-    Setting(lookahead=20, weight=0.5, care=0.8),
+    Setting(care=0.0),
 )
 # Never used to choose a plan: what these routes need is quoted as expected swaps.
 HELD_OUT = (
@@ -49,9 +50,16 @@ class Judged:
 
 
 class Judge:
-    """Route placements of one instance and keep what was found."""
+    """Route placements of one instance and keep what was found.
 
-    def __init__(self, instance: Instance, *, seed: int) -> None:
+    `route_tables` may be those of the same device with fewer sites in service, where
+    routes must stay inside a region.
+    """
+
+    def __init__(
+        self, instance: Instance, *, seed: int, route_tables: Tables | None = None
+    ) -> None:
+        self.route_tables = route_tables or instance.tables
         self.instance = instance
         self.seed = seed
         self._placed: dict[Placement, PlacedCircuit] = {}
@@ -77,7 +85,7 @@ class Judge:
         self, placement: Placement, setting: Setting, seed: int
     ) -> Judged | None:
         placed = self._place(placement)
-        found = route(placed, self.instance.tables, setting=setting, seed=seed)
+        found = route(placed, self.route_tables, setting=setting, seed=seed)
         if found is None:
             return None
         line = timeline(placed, self.instance.tables, found)
@@ -140,7 +148,7 @@ class Judge:
         placed = self._place(judged.placement)
         counts = []
         for setting, seed in HELD_OUT:
-            found = route(placed, self.instance.tables, setting=setting, seed=seed)
+            found = route(placed, self.route_tables, setting=setting, seed=seed)
             if found is not None:
                 counts.append(found.count)
         if not counts:

@@ -15,17 +15,18 @@ import numpy as np
 from placer.errors import InternalError, NoPlan, OutOfTime
 from placer.plan import POLICIES
 from placer.planner import bounds
-from placer.planner.joint import Open, everything, solve
+from placer.planner.joint import Open, everything, solve, tighten
 from placer.planner.judge import Judge, Judged
 from placer.planner.placement import Instance, Placement, make_instance
 from placer.planner.policies import allowed, everything_allowed
-from placer.planner.search import Amount, search
+from placer.planner.region import narrowed
+from placer.planner.search import Amount, Candidate, search
 from placer.planner.verdict import overrun
 from placer.planner.windows import improve
 from placer.tables import device_tables
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
+    from collections.abc import Callable, Sequence
 
     from placer.plan import Figures
     from placer.problem import Problem
@@ -142,8 +143,9 @@ def run(
     """
     work = WORK[effort]
     instance = make_instance(problem, device_tables(problem.device))
-    judge = Judge(instance, seed=seed)
-    engine = _Engine(instance, judge, work, seed, progress)
+    narrow = narrowed(instance)
+    judge = Judge(instance, seed=seed, route_tables=narrow.tables)
+    engine = _Engine(instance, narrow, judge, work, seed, progress)
     policies = tuple(engine.policy(name) for name in POLICIES)
     engine.search_all([p.judged for p in policies if p.judged is not None])
     engine.solve_joint()
@@ -163,12 +165,14 @@ class _Engine:
     def __init__(
         self,
         instance: Instance,
+        narrow: Instance,
         judge: Judge,
         work: Work,
         seed: int,
         progress: Callable[[str], None],
     ) -> None:
         self.instance = instance
+        self.narrow = narrow
         self.judge = judge
         self.work = work
         self.seed = seed
@@ -225,6 +229,26 @@ class _Engine:
                 judged.append(result)
         return judged
 
+    def _search(
+        self,
+        recipes: Choice,
+        *,
+        amount: Amount,
+        seed: int,
+        starts: Sequence[Placement] = (),
+    ) -> list[Candidate]:
+        """Search inside the region that the limit on sites leaves."""
+        inside = set(self.narrow.usable)
+        kept = [p for p in starts if inside.issuperset(_sites_of(p))]
+        found = search(self.narrow, recipes, amount=amount, seed=seed, starts=kept)
+        if self.narrow is self.instance:
+            return found
+        wide = [tighten(self.instance, c.placement) for c in found]
+        return sorted(
+            (Candidate(self.judge.estimate(p), p) for p in wide),
+            key=lambda c: c.estimate,
+        )
+
     def policy(self, name: str) -> PolicyOutcome:
         """Plan with one fixed workspace policy."""
         self.progress(f"policy: {name} only")
@@ -234,9 +258,7 @@ class _Engine:
         choice, reason = allowed(self.instance, name)
         if reason:
             return PolicyOutcome(name, reason, None)
-        found = search(
-            self.instance, choice, amount=self._fit(self.work.policy), seed=self.seed
-        )
+        found = self._search(choice, amount=self._fit(self.work.policy), seed=self.seed)
         if not found:
             return PolicyOutcome(name, "not enough free sites at some call", None)
         self.estimates += [c.placement for c in found[:1]]
@@ -248,8 +270,7 @@ class _Engine:
     def search_all(self, starts: list[Judged]) -> None:
         """Search with every recipe, from scratch and from the policies' plans."""
         self.progress("search: all recipes")
-        found = search(
-            self.instance,
+        found = self._search(
             self.recipes,
             amount=self._fit(self.work.search),
             seed=self.seed,
@@ -257,8 +278,7 @@ class _Engine:
         every = (1.0,) * max(1, len(starts))
         short = self._fit(Amount(2, self.work.search.moves // 2, every))
         if starts:
-            found += search(
-                self.instance,
+            found += self._search(
                 self.recipes,
                 amount=short,
                 seed=self.seed + 1,
@@ -297,6 +317,9 @@ class _Engine:
         proven = self.joint_bound is not None and start is not None
         if start is None or self.work.windows == 0:
             return
+        if self.narrow is not self.instance:
+            # Windows would reach for sites outside the region.
+            return
         if proven and self.judge.estimate(start) == self.joint_bound:
             return
         self.progress("windows: recipes, slots and order again")
@@ -331,8 +354,7 @@ class _Engine:
                 (recipe,) if i in wanted else (best.placement.recipes[i],)
                 for i in range(self.instance.steps)
             )
-            found = search(
-                self.instance,
+            found = self._search(
                 choice,
                 amount=amount,
                 seed=self.seed + tried,
@@ -365,8 +387,7 @@ class _Engine:
                 recipes[i] if i in late else (c,) if c in recipes[i] else recipes[i]
                 for i, c in enumerate(used)
             )
-            found = search(
-                self.instance,
+            found = self._search(
                 kept,
                 amount=Amount(1, self.work.search.moves // 4, (1.0,)),
                 seed=self.seed + 77 + number,
@@ -449,6 +470,10 @@ class _Engine:
             policies,
             tuple(j.figures for j in self.pool),
         )
+
+
+def _sites_of(placement: Placement) -> set[int]:
+    return {*placement.sites, *(p for row in placement.slot_sites for p in row)}
 
 
 def _joint_size(instance: Instance) -> int:
