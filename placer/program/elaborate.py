@@ -48,7 +48,10 @@ class _TooMany(Exception):  # noqa: N818 - ends the pass, never leaves this modu
 
 @dataclass(slots=True)
 class Elaboration:
-    """A program being worked out."""
+    """A program being worked out.
+
+    `skipped` counts statements that use a refused name; their fault is reported there.
+    """
 
     dialect: str
     parse: Parser
@@ -58,6 +61,7 @@ class Elaboration:
     draft: Draft = field(default_factory=Draft)
     faults: list[Fault] = field(default_factory=list)
     files: list[Path] = field(default_factory=list)
+    skipped: int = 0
 
     def run(self, statements: Sequence[Statement]) -> None:
         """Work out statements at the outermost level."""
@@ -75,6 +79,7 @@ class Elaboration:
                 self._check_notes(statement)
             except InputError as error:
                 self.faults.extend(error.faults)
+                self.skipped += not error.faults
                 self._mark_broken(statement)
             if len(self.faults) > MOST_FAULTS:
                 raise _TooMany

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import re
 
-from placer.errors import InputError
+from placer.errors import InputError, InternalError
 from placer.program.assemble import assemble
 from placer.program.claims import check_claims
 from placer.program.elaborate import Parser, elaborate
@@ -38,6 +38,8 @@ def read_qasm(text: str, path: str, *, open_inputs: bool = False) -> Program:
     work = elaborate(parsed, parse, path, start=start)
     if work.faults:
         raise InputError(work.faults)
+    if work.skipped:
+        raise InternalError(f"{path}: a statement was skipped without a fault")
     program = assemble(work.draft, parsed.dialect, text, path, open_inputs=open_inputs)
     check_claims(program)
     return program

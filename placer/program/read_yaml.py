@@ -1,22 +1,38 @@
 """Program YAML to a program; `program-yaml.md` in this folder describes the format.
 
-Steps are read in `yaml_step`, cleanup is written out in `yaml_scope`, the claims about
-workspace are verified in `claims`.
+Steps are read in the `yaml_...` files, cleanup is written out in `yaml_scope`, the
+claims about workspace are verified in `claims`.
 """
 
 from __future__ import annotations
+
+from collections.abc import Callable
 
 from placer.errors import Fault, InputError, Place
 from placer.program.assemble import assemble
 from placer.program.claims import check_claims
 from placer.program.draft import Draft
 from placer.program.model import Program, Start
-from placer.program.yaml_operand import NAME
-from placer.program.yaml_step import RESERVED, WIDEST, Steps, TooMany
+from placer.program.yaml_block import repeat, scope
+from placer.program.yaml_call import mcp, mcx, mcz, product
+from placer.program.yaml_operand import NAME, RESERVED
+from placer.program.yaml_readout import barrier, measure, reset
+from placer.program.yaml_step import WIDEST, Steps, TooMany
 from placer.yamlnode import Faults, Node
 from placer.yamltext import parse
 
 _KEYS = ("name", "note", "registers", "bits", "steps")
+_READERS: dict[str, Callable[[Steps, Node], None]] = {
+    "mcx": mcx,
+    "mcz": mcz,
+    "mcp": mcp,
+    "and": product,
+    "measure": measure,
+    "reset": reset,
+    "barrier": barrier,
+    "repeat": repeat,
+    "scope": scope,
+}
 _REGISTER_KEYS = ("width", "start", "lendable", "workspace")
 
 
@@ -41,7 +57,8 @@ def read_yaml(text: str, path: str, *, open_inputs: bool = False) -> Program:
             names[key] = wires
             if draft.registers[-1].is_workspace:
                 owners.update(dict.fromkeys(wires, -1))
-    steps = Steps(draft, names, _bits(entries.get("bits"), draft, faults), faults)
+    bits = _bits(entries.get("bits"), draft, faults)
+    steps = Steps(draft, names, bits, faults, _READERS)
     steps.owners.update(owners)
     _check_names(entries, faults)
     if "steps" in entries:

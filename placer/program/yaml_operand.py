@@ -23,6 +23,7 @@ _OPERAND = re.compile(
     re.ASCII,
 )
 NAME = re.compile(r"[A-Za-z_]\w{0,63}", re.ASCII)
+RESERVED = frozenset({"all", "not"})
 LARGEST_ANGLE = 1e15
 
 

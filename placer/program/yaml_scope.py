@@ -49,7 +49,6 @@ def mirror(
     draft: Draft,
     compute: Sequence[Step],
     scope: int,
-    workspace_of: dict[int, list[int]],
     fresh: Callable[[int, int], dict[int, int]],
 ) -> list[Step]:
     """Return the cleanup of a scope: its compute part, backwards.
@@ -62,7 +61,7 @@ def mirror(
     for number in sorted({step.scope for step in compute} - {scope}):
         _copy_chain(draft, number, copies)
     for old, new in sorted(copies.items()):
-        if old != new and workspace_of.get(old):
+        if old != new:
             moved.update(fresh(old, new))
     result = []
     for step in reversed(compute):
@@ -88,9 +87,12 @@ def _copy_chain(draft: Draft, number: int, copies: dict[int, int]) -> int:
 
 
 def body_faults(
-    compute: Sequence[Step], body: Sequence[Step], names: Sequence[str]
+    compute: Sequence[Step], body: Sequence[Step], names: Callable[[], Sequence[str]]
 ) -> list[Fault]:
-    """Find steps of a body that spoil the cleanup: they change what it needs."""
+    """Find steps of a body that spoil the cleanup: they change what it needs.
+
+    `names` gives the names of the wires, once there is something to say.
+    """
     needed: dict[int, Step] = {}
     for step in compute:
         if step.kind != "barrier":
@@ -105,7 +107,7 @@ def body_faults(
                     Fault(
                         step.place,
                         "spoiled-cleanup",
-                        f"'{step.name}' in the body changes {names[wire]}, which the "
+                        f"'{step.name}' in the body changes {names()[wire]}, which the "
                         f"compute part uses in line {first.place.line} and the "
                         "cleanup needs unchanged",
                         "work on a copy, or move the step out of the scope",

@@ -6,6 +6,8 @@ import re
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 from program_matrices import program_matrix
 
 from placer.errors import InputError
@@ -138,3 +140,52 @@ def test_every_gate_has_a_class():
     named = DIAGONAL | BRANCHING | classical | {"mcx", "and", "reset"}
     assert set(PLAIN_GATES) <= named
     assert not DIAGONAL & BRANCHING
+
+
+WIRES = ["a[0]", "a[1]", "a[2]", "t", "w[0]", "w[1]"]
+CLASSICAL = {"x": 1, "cx": 2, "ccx": 3, "swap": 2, "z": 1, "cz": 2, "s": 1}
+
+
+@st.composite
+def circuits(draw, gates):
+    """Return gates on the wires of the header, often with their mirror behind them."""
+    steps = []
+    for _ in range(draw(st.integers(1, 6))):
+        name = draw(st.sampled_from(sorted(gates)))
+        # Branching gates stay away from the workspace, where they are refused at once.
+        wires = WIRES if name in CLASSICAL else WIRES[:4]
+        chosen = draw(st.permutations(wires))[: gates[name]]
+        steps.append(f"{name} {', '.join(chosen)};")
+    if draw(st.booleans()):
+        mirror = [f"inv @ {step}" for step in reversed(steps)]
+        steps += draw(st.sampled_from([[], ["cx w[0], t;"]])) + mirror
+    return " ".join(steps)
+
+
+def clean_by_matrix(body):
+    """Whether the workspace of a circuit ends in |0> by its whole unitary."""
+    # The same text without the claim, so that nothing is refused.
+    text = HEAD.replace("@placer.workspace init=zero ends=zero\n", "") + body
+    matrix = program_matrix(read_program(text, "p.qasm"))
+    return bool(np.allclose(matrix[16:, :16], 0))
+
+
+def is_kept(body):
+    try:
+        read(body)
+    except InputError:
+        return False
+    return True
+
+
+@settings(max_examples=150, deadline=None, derandomize=True)
+@given(circuits(CLASSICAL))
+def test_classical_circuits_are_judged_exactly(body):
+    assert is_kept(body) == clean_by_matrix(body)
+
+
+@settings(max_examples=150, deadline=None, derandomize=True)
+@given(circuits({**CLASSICAL, "h": 1, "ch": 2, "rx(0.4)": 1, "U(0.3,1,2)": 1}))
+def test_no_broken_claim_passes(body):
+    if is_kept(body):
+        assert clean_by_matrix(body)
