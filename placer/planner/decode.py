@@ -38,11 +38,14 @@ class Taste:
 
     `move_scale` multiplies prices of distance, `delay_scale` the price of time; 1.0
     is the placement cost's own weight.  `recipes[i]` are the open choices of step i.
+    Steps in `lent_only` take no workspace but what a wire lends: nothing of theirs
+    is a value that could outlive its lifetime.
     """
 
     recipes: tuple[tuple[int, ...], ...]
     move_scale: float = 1.0
     delay_scale: float = 1.0
+    lent_only: frozenset[int] = frozenset()
 
 
 @dataclass(slots=True)
@@ -290,6 +293,10 @@ class _Decoder:
         """Choose a site per slot, one after the other, each the cheapest."""
         operands = self.instance.operands[step]
         free_at, clean_open, borrowed_open = self._availability(state, operands)
+        if step in self.taste.lent_only:
+            clean_open[:] = HARD
+            unheld = [p for p in self.instance.usable if state.holder[p] < 0]
+            borrowed_open[unheld] = HARD
         delay = self.delay_price * max(self.hurry[step], 0.05)
         base = profile.built.fine.operands
         chosen: list[int] = []

@@ -41,7 +41,8 @@ class Work:
 
     `search` and `policy` are search amounts, `steps` the most steps that one search
     decodes over all its rounds, `gates` the two-body gates that optional routes may
-    have together, `routed` the candidates judged per search, `windows`, `flips`,
+    have together (`repair_gates`: those of repairs), `routed` the candidates judged
+    per search, `windows`, `flips`,
     `repairs` and `routes` (per final candidate) plain counts, `joint` CP-SAT's
     deterministic time, `joint_size` the largest joint model (about its clauses).
     """
@@ -54,6 +55,7 @@ class Work:
     windows: int
     flips: int
     repairs: int
+    repair_gates: int
     joint: float
     joint_size: int
     routes: int
@@ -68,7 +70,8 @@ WORK: dict[str, Work] = {
         routed=2,
         windows=0,
         flips=0,
-        repairs=2,
+        repairs=4,
+        repair_gates=20_000,
         joint=0.5,
         joint_size=60_000,
         routes=1,
@@ -77,11 +80,12 @@ WORK: dict[str, Work] = {
         search=Amount(5, 120_000, (1.0, 0.4, 2.5, 1.0, 0.4, 2.5)),
         policy=Amount(3, 80_000, (1.0, 0.4)),
         steps=2_400,
-        gates=120_000,
+        gates=250_000,
         routed=20,
         windows=4,
         flips=16,
-        repairs=4,
+        repairs=24,
+        repair_gates=200_000,
         joint=4.0,
         joint_size=250_000,
         routes=6,
@@ -94,7 +98,8 @@ WORK: dict[str, Work] = {
         routed=16,
         windows=60,
         flips=60,
-        repairs=12,
+        repairs=60,
+        repair_gates=2_000_000,
         joint=120.0,
         joint_size=3_000_000,
         routes=8,
@@ -236,11 +241,19 @@ class _Engine:
         amount: Amount,
         seed: int,
         starts: Sequence[Placement] = (),
+        lent_only: frozenset[int] = frozenset(),
     ) -> list[Candidate]:
         """Search inside the region that the limit on sites leaves."""
         inside = set(self.narrow.usable)
         kept = [p for p in starts if inside.issuperset(_sites_of(p))]
-        found = search(self.narrow, recipes, amount=amount, seed=seed, starts=kept)
+        found = search(
+            self.narrow,
+            recipes,
+            amount=amount,
+            seed=seed,
+            starts=kept,
+            lent_only=lent_only,
+        )
         if self.narrow is self.instance:
             return found
         wide = [tighten(self.instance, c.placement) for c in found]
@@ -367,45 +380,34 @@ class _Engine:
         return self.judge.gates(judged.placement) > self.gates_left
 
     def repair(self) -> None:
-        """Give other recipes to calls whose slots outlive the budget.
+        """Take workspace that is no value for calls whose slots outlive the budget.
 
-        Starts from the plan of least expected error, whether it fits or not.
+        Starts from the plan of least expected error, whether it fits or not; a call
+        that was late once never again gets workspace but what a wire lends.
         """
         current = min(self.pool, key=lambda j: j.figures.costs.total, default=None)
-        recipes = self.recipes
+        left = self.work.repair_gates
+        late: set[int] = set()
         for number in range(self.work.repairs):
-            if current is None or not current.late:
+            if current is None or set(current.late) <= late or left < 0:
                 return
-            self.progress(f"repair: {len(current.late)} calls hold values too long")
-            late = set(current.late)
-            used = current.placement.recipes
-            recipes = tuple(
-                self._shorter(i, row, used[i], number) if i in late else row
-                for i, row in enumerate(recipes)
-            )
+            late |= set(current.late)
+            self.progress(f"repair: {len(late)} calls hold values too long")
             kept = tuple(
-                recipes[i] if i in late else (c,) if c in recipes[i] else recipes[i]
-                for i, c in enumerate(used)
+                self.recipes[i] if i in late else (c,)
+                for i, c in enumerate(current.placement.recipes)
             )
             found = self._search(
                 kept,
-                amount=Amount(1, self.work.search.moves // 4, (1.0,)),
+                amount=Amount(1, self.work.search.moves // 8, (1.0,)),
                 seed=self.seed + 77 + number,
                 starts=[current.placement],
+                lent_only=frozenset(late),
             )
             if not found:
                 return
-            current = self._route(found[0].placement, is_needed=number < 2)
-
-    def _shorter(
-        self, step: int, row: tuple[int, ...], used: int, number: int
-    ) -> tuple[int, ...]:
-        """Return a late step's recipes without the one in use, later without slots."""
-        others = tuple(c for c in row if c != used)
-        if number > 0:
-            profiles = self.instance.profiles[step]
-            others = tuple(c for c in row if not profiles[c].built.slots)
-        return others or row
+            left -= self.judge.gates(found[0].placement)
+            current = self._route(found[0].placement, is_needed=True)
 
     def _classes(self) -> list[tuple[list[int], int]]:
         """Return (steps of one size, recipe) to try, the largest classes first."""

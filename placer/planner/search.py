@@ -45,12 +45,16 @@ def search(
     amount: Amount,
     seed: int,
     starts: Sequence[Placement] = (),
+    lent_only: frozenset[int] = frozenset(),
 ) -> list[Candidate]:
-    """Return placements found from scratch and from given ones, best first."""
+    """Return placements found from scratch and from given ones, best first.
+
+    Steps in `lent_only` take no workspace but what a wire lends.
+    """
     found: dict[tuple[object, ...], Candidate] = {}
     links = neighbours_of(instance)
     for number, scale in enumerate(amount.scales):
-        taste = Taste(recipes, move_scale=scale)
+        taste = Taste(recipes, move_scale=scale, lent_only=lent_only)
         sites = _first_sites(instance, recipes)
         earlier: Placement | None = None
         if starts:
