@@ -11,6 +11,7 @@ from placer.errors import InputError, Place
 from placer.program.draft import Draft, DraftRegister, Part, Step
 from placer.program.model import Operation, Program, Register, Scope, WireId
 
+PARTS: tuple[Part, ...] = ("compute", "body", "cleanup")
 Syntax = Literal["openqasm2", "openqasm3", "yaml"]
 
 
@@ -130,14 +131,12 @@ def _scopes(draft: Draft, steps: Sequence[Step]) -> tuple[Scope, ...]:
     result = []
     for scope in draft.scopes:
         spans = []
-        starts = [
-            span[0] for (number, _), span in ranges.items() if number == scope.number
-        ]
-        end = min(starts, default=0)
-        for part in ("compute", "body", "cleanup"):
-            found = ranges.get((scope.number, part), [end, end])
-            spans.append((found[0], found[1]))
-            end = found[1]
+        # An empty part stands where the part before it ends.
+        parts = [ranges.get((scope.number, part)) for part in PARTS]
+        end = min((found[0] for found in parts if found), default=0)
+        for found in parts:
+            first, end = found or (end, end)
+            spans.append((first, end))
         compute, body, cleanup = spans
         result.append(
             Scope(

@@ -21,6 +21,7 @@ from placer.program.model import Operation, Program
 
 Words = NDArray[np.uint64]
 
+MOST_FAULTS = 50
 SAMPLES = 4096
 MOST_FREE = 12  # wires whose inputs are all tried: 2^12 = SAMPLES
 _WORDS = SAMPLES // 64
@@ -73,6 +74,8 @@ def check_claims(program: Program) -> None:
     for operation in program.operations:
         replay.run(operation)
     for wire in claimed:
+        if len(replay.faults) >= MOST_FAULTS:
+            break
         replay.end(wire)
     if replay.faults:
         raise InputError(replay.faults)
@@ -192,7 +195,11 @@ class _Replay:
         before = self.bits[target]
         after = before ^ product
         wrong = after if operation.inverse else before
-        if wrong.any() and target not in self.refused:
+        if (
+            wrong.any()
+            and target not in self.refused
+            and len(self.faults) < MOST_FAULTS
+        ):
             self.refused.add(target)
             name = self.program.wire_names[target]
             what = (

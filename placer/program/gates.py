@@ -54,12 +54,16 @@ Change = tuple[str, int]
 
 @dataclass(slots=True)
 class Gates:
-    """The gates in sight; `names` holds the constants that bodies may use."""
+    """The gates in sight; `names` holds the constants that bodies may use.
+
+    `used` are gates of the table that were called: they cannot change their meaning.
+    """
 
     names: Names
     has_library: bool = False
     own: dict[str, OwnGate | None] = field(default_factory=dict)
     notes: list[str] = field(default_factory=list)
+    used: set[str] = field(default_factory=set)
     count: int = 0
     _terms: dict[tuple[int, tuple[float, ...]], Terms] = field(default_factory=dict)
     _raws: dict[tuple[object, ...], tuple[Raw, ...]] = field(default_factory=dict)
@@ -76,6 +80,7 @@ class Gates:
         if name in ALWAYS:
             return ALWAYS[name]
         if self.has_library and name in GATES:
+            self.used.add(name)
             return GATES[name]
         self.own[name] = None
         is_v2 = self.names.dialect == "openqasm2"
@@ -101,7 +106,8 @@ class Gates:
                 f"the gate '{name}' is declared already, in line {line}",
             )
         is_fixed = self.has_library and name in FIXED[self.names.dialect]
-        if is_fixed or name in ALWAYS or name == "gphase":
+        is_fixed = is_fixed or name in ALWAYS or name in self.used
+        if is_fixed or name == "gphase":
             raise InputError.at(
                 place,
                 "declared-twice",
@@ -115,8 +121,6 @@ class Gates:
             raise InputError(faults)
         self.count += 1
         self.own[name] = OwnGate(self.count, self._depth(definition), definition)
-        # Calls of a gate of the table that had this name must not be taken for it.
-        self._raws.clear()
 
     def _depth(self, definition: GateDefinition) -> int:
         """Return how deep definitions are nested below one, itself included."""
@@ -334,7 +338,7 @@ class Gates:
         if call.name == definition.name:
             yield Fault(call.place, "recursion", f"the gate '{call.name}' calls itself")
             return
-        # Names that are not known before the gate is called stand for the number 1.
+        # Parameters have no value yet; what depends on them is judged at each call.
         self.names.blocks.append({name: (Broken(), call.place) for name in values})
         try:
             gate = self.find(call.name, call.place)

@@ -19,6 +19,7 @@ from placer.program.tokens import Reader
 
 _COMMENT = re.compile(r"//[^\n]*|/\*.*?\*/", re.DOTALL)
 _OLD_WORDS = re.compile(r'^\s*(?:qreg|creg)\b|\binclude\s*"qelib1\.inc"', re.MULTILINE)
+_IDLE_COMMENT = re.compile(r"^\s*(//\s*@placer\b)", re.MULTILINE)
 _PARSERS: dict[str, Parser] = {"2": parse_openqasm2, "3": parse_openqasm3}
 _VERSIONS = {"2": "2", "2.0": "2", "3": "3", "3.0": "3", "3.1": "3"}
 
@@ -40,9 +41,20 @@ def read_qasm(text: str, path: str, *, open_inputs: bool = False) -> Program:
         raise InputError(work.faults)
     if work.skipped:
         raise InternalError(f"{path}: a statement was skipped without a fault")
+    if version == "3":
+        work.draft.notes.extend(_idle_comments(text))
     program = assemble(work.draft, parsed.dialect, text, path, open_inputs=open_inputs)
     check_claims(program)
     return program
+
+
+def _idle_comments(text: str) -> list[str]:
+    """Return notes on comments that look like annotations but are none."""
+    return [
+        f"the comment in line {text.count(chr(10), 0, match.start(1)) + 1} is no "
+        "annotation in OpenQASM 3, which needs '@' without '//'"
+        for match in _IDLE_COMMENT.finditer(text)
+    ]
 
 
 def _version(text: str, path: str) -> str:

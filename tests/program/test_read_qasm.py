@@ -206,6 +206,14 @@ class TestGates:
         )
         assert flat(read(V2 + text)) == ["cx q[0] q[1]", "p q[1] 1", "cx q[0] q[1]"]
 
+    def test_library_gate_keeps_its_meaning_once_it_is_used(self):
+        text = (
+            "qreg q[2];\ngate g a,b { rzz(1) a,b; }\n"
+            "gate rzz(t) a,b { cx a,b; u1(t) b; cx a,b; }\ng q[0],q[1];"
+        )
+        (fault,) = faults(V2 + text)
+        assert (fault.code, fault.place.line) == ("declared-twice", 5)
+
     def test_loops_in_gates(self):
         text = (
             "gate g(t) a, b { for int i in [1:2] { rz(t * i) a; cx a, b; } }\n"
@@ -321,6 +329,11 @@ class TestAnnotations:
             f"{V2}{lead}placer.keep\n// any words\nqreg a[1];\n// @other.x\nqreg b[1];"
         )
         assert [r.lendable for r in read(text).registers] == [False, True]
+
+    def test_comment_in_version_3_is_none_and_the_program_says_so(self):
+        program = read(f"{V3}// @placer.keep\nqubit a;\n")
+        assert program.registers[0].lendable
+        assert "the comment in line 3 is no annotation" in program.assumed
 
 
 class TestFaults:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import re
+import time
 from pathlib import Path
 
 import numpy as np
@@ -320,3 +321,18 @@ def test_the_description_of_the_format_runs():
     program = read_program(match[1], "example.yaml")
     assert program.name == "marked-sum"
     assert math.isclose(program.operations[9].params[0], math.pi / 4)
+
+
+def test_scope_with_an_empty_compute_part():
+    program = read("- h: t\n- scope: {compute: [], body: [{x: t}]}\n- h: t")
+    (scope,) = program.scopes
+    assert (scope.compute, scope.body, scope.cleanup) == ((1, 1), (1, 2), (2, 2))
+
+
+def test_many_scopes_read_quickly():
+    inner = "\n".join(f"    {line}" for line in SCOPE.strip().split("\n"))
+    start = time.process_time()
+    program = read(f"- repeat:\n    times: 7000\n    steps:\n{inner}")
+    assert len(program.operations) == 91_000
+    # 5 s is the promise; twice that leaves room for a slow machine.
+    assert time.process_time() - start < 10
