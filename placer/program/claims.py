@@ -195,11 +195,8 @@ class _Replay:
         before = self.bits[target]
         after = before ^ product
         wrong = after if operation.inverse else before
-        if (
-            wrong.any()
-            and target not in self.refused
-            and len(self.faults) < MOST_FAULTS
-        ):
+        is_new = target not in self.refused and len(self.faults) < MOST_FAULTS
+        if is_new and wrong.any():
             self.refused.add(target)
             name = self.program.wire_names[target]
             what = (

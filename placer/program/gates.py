@@ -10,6 +10,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
 
 from placer.errors import Fault, InputError, Place, did_you_mean
+from placer.program.annotation import foreign, refuse_own
 from placer.program.gatetable import ALWAYS, FIXED, GATES, GLOBAL_PHASE, BuiltIn
 from placer.program.loops import MOST_OPERATIONS, loop_values
 from placer.program.lowering import Raw, lower
@@ -27,6 +28,10 @@ from placer.program.syntax import (
 from placer.program.terms import Term, Terms, controlled, inverse, moved, power
 
 DEEPEST_GATE = 150
+_CU3 = (
+    "cu3 was read as in newer versions of qelib1.inc, where the upper left corner of "
+    "the controlled matrix is real"
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,6 +86,8 @@ class Gates:
             return ALWAYS[name]
         if self.has_library and name in GATES:
             self.used.add(name)
+            if name == "cu3" and _CU3 not in self.notes:
+                self.notes.append(_CU3)
             return GATES[name]
         self.own[name] = None
         is_v2 = self.names.dialect == "openqasm2"
@@ -315,6 +322,7 @@ class Gates:
         values: frozenset[str],
     ) -> Iterator[Fault]:
         for statement in body:
+            yield from self._note_faults(statement)
             if isinstance(statement, Unreadable):
                 yield from statement.faults
             elif isinstance(statement, GateCall):
@@ -331,6 +339,17 @@ class Gates:
                 )
             if isinstance(statement, GateCall | Barrier):
                 yield from _operand_faults(statement, definition)
+
+    def _note_faults(self, statement: Statement) -> Iterator[Fault]:
+        """Refuse annotations of ours in a body; say that others are left out."""
+        try:
+            refuse_own(statement.annotations)
+        except InputError as error:
+            yield from error.faults
+        self.notes.extend(
+            f"the annotation '{note}' in the body of a gate is not handed on"
+            for note in foreign(statement.annotations)
+        )
 
     def _call_faults(
         self, call: GateCall, definition: GateDefinition, values: frozenset[str]

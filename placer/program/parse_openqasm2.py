@@ -77,7 +77,7 @@ def parse_openqasm2(text: str, file: str) -> Parsed:
     reader = Reader(text, file)
     faults: list[Fault] = []
     statements: list[Statement] = []
-    _skip_version(reader)
+    faults.extend(_version_faults(reader))
     while len(faults) < MOST_FAULTS:
         statement = _simple(reader)
         if statement is not None:
@@ -88,6 +88,7 @@ def parse_openqasm2(text: str, file: str) -> Parsed:
             if reader.peek().kind == "end":
                 break
             statements.append(_statement(reader, len(statements)))
+            faults.extend(_notes_inside(reader))
         except InputError as error:
             faults.extend(error.faults)
             reader.notes.clear()
@@ -105,15 +106,35 @@ def parse_openqasm2(text: str, file: str) -> Parsed:
     return Parsed("openqasm2", tuple(statements))
 
 
-def _skip_version(reader: Reader) -> None:
+def _version_faults(reader: Reader) -> tuple[Fault, ...]:
     """Step over the version, which the caller has judged already."""
     try:
         if reader.peek().text == "OPENQASM":
             reader.take()
             reader.take()
-            reader.accept(";")
-    except InputError:
-        return
+            if not reader.accept(";"):
+                found = shown(reader.peek())
+                what = f"expected ';' after the version, found {found}"
+                reader.fail(reader.peek(), what)
+    except InputError as error:
+        # A letter out of place is reported again by the statement it stands in.
+        return tuple(fault for fault in error.faults if fault.code == "syntax")
+    return ()
+
+
+def _notes_inside(reader: Reader) -> list[Fault]:
+    """Refuse annotations that were found in the middle of a statement."""
+    faults = [
+        Fault(
+            note.place,
+            "annotation-place",
+            f"'@{note.name}' stands inside of a statement",
+            "move it to the line before the statement it belongs to",
+        )
+        for note in reader.notes
+    ]
+    reader.notes.clear()
+    return faults
 
 
 def _simple(reader: Reader) -> GateCall | None:

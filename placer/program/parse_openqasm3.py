@@ -97,7 +97,7 @@ def parse_openqasm3(text: str, file: str) -> Parsed:
     except QASM3ParsingError as error:
         raise _explained(error, file) from error
     except RecursionError as error:
-        raise _too_deep(file) from error
+        raise _too_deep(text, file) from error
     except (AttributeError, ValueError, KeyError, TypeError, IndexError) as error:
         raise InputError.at(
             Place(file, 1, 1),
@@ -108,16 +108,28 @@ def parse_openqasm3(text: str, file: str) -> Parsed:
     try:
         return Parsed("openqasm3", convert(tree, text, Places(text, file)))
     except RecursionError as error:
-        raise _too_deep(file) from error
+        raise _too_deep(text, file) from error
 
 
-def _too_deep(file: str) -> InputError:
+def _too_deep(text: str, file: str) -> InputError:
     return InputError.at(
-        Place(file),
+        Places(text, file).at(_deepest(text)),
         "too-deep",
         "an expression or a block is nested too deeply",
         "split the expression with const declarations",
     )
+
+
+def _deepest(text: str) -> int:
+    """Return the offset of the innermost bracket, comments not counted."""
+    depth = most = offset = 0
+    for match in re.finditer(r"//[^\n]*|/\*.*?\*/|[\[\](){}]", text, re.DOTALL):
+        sign = match.group()
+        if len(sign) == 1:
+            depth += 1 if sign in "([{" else -1
+        if depth > most:
+            most, offset = depth, match.start()
+    return offset
 
 
 def _explained(error: QASM3ParsingError, file: str) -> InputError:
