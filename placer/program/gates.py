@@ -12,20 +12,19 @@ from dataclasses import dataclass, field
 from placer.errors import Fault, InputError, Place, did_you_mean
 from placer.program.annotation import foreign, refuse_own
 from placer.program.gatetable import ALWAYS, FIXED, GATES, GLOBAL_PHASE, BuiltIn
-from placer.program.loops import MOST_OPERATIONS, loop_values
+from placer.program.loops import loop_values
 from placer.program.lowering import Raw, lower
+from placer.program.modifiers import Change, changed, changes_of, limit
 from placer.program.names import Broken, Constant, Entity, Names, Silent
 from placer.program.syntax import (
     Barrier,
-    Expression,
     GateCall,
     GateDefinition,
     Loop,
-    Modifier,
     Statement,
     Unreadable,
 )
-from placer.program.terms import Term, Terms, controlled, inverse, moved, power
+from placer.program.terms import Term, Terms, moved
 
 DEEPEST_GATE = 150
 _CU3 = (
@@ -51,10 +50,6 @@ class OwnGate:
     def wires(self) -> int:
         """How many wires it acts on."""
         return len(self.definition.wires)
-
-
-Change = tuple[str, int]
-"""A modifier with its value: ('ctrl', 2), ('negctrl', 1), ('inv', 1), ('pow', -3)."""
 
 
 @dataclass(slots=True)
@@ -145,40 +140,6 @@ class Gates:
             )
         return depth
 
-    def changes(self, modifiers: Sequence[Modifier]) -> tuple[Change, ...]:
-        """Return the values of modifiers, in the order they are written."""
-        result: list[Change] = []
-        for modifier in modifiers:
-            value = 1
-            if modifier.value is not None:
-                value = self._count(modifier, modifier.value)
-            result.append((modifier.kind, value))
-            if modifier.kind == "negctrl" and value > 1:
-                note = f"negctrl({value}) was read as {value} nested negctrl"
-                if note not in self.notes:
-                    self.notes.append(note)
-        return tuple(result)
-
-    def _count(self, modifier: Modifier, expression: Expression) -> int:
-        if modifier.kind == "pow":
-            value = self.names.value(expression)
-            if isinstance(value, float) and not value.is_integer():
-                raise InputError.at(
-                    modifier.place,
-                    "unsupported",
-                    f"pow({value:g}) is not supported, only whole powers are",
-                    "write the root as a gate of its own",
-                )
-            return int(value)
-        count = self.names.whole(expression, f"the count of '{modifier.kind}'")
-        if count < 1:
-            raise InputError.at(
-                modifier.place,
-                "bad-count",
-                f"{modifier.kind}({count}) needs a count of at least 1",
-            )
-        return count
-
     def check_call(
         self, call: GateCall, gate: BuiltIn | OwnGate, changes: Sequence[Change]
     ) -> None:
@@ -218,30 +179,14 @@ class Gates:
     def operations(self, call: GateCall) -> tuple[Raw, ...]:
         """Return the operations of a call on local wires."""
         gate = self.find(call.name, call.place)
-        changes = self.changes(call.modifiers)
+        changes = changes_of(self.names, call.modifiers, self.notes)
         self.check_call(call, gate, changes)
         values = self.values(call)
         key = (call.name, values, changes)
         if key not in self._raws:
-            terms = self._changed(self._terms_of(gate, values, call), changes, call)
+            terms = changed(self._terms_of(gate, values, call), changes, call)
             self._raws[key] = lower(terms)
         return self._raws[key]
-
-    def _changed(
-        self, terms: Terms, changes: Sequence[Change], call: GateCall
-    ) -> Terms:
-        """Return terms under modifiers; the last one written acts first."""
-        for kind, value in reversed(changes):
-            if kind == "inv":
-                terms = inverse(terms)
-            elif kind == "pow":
-                _limit(len(terms) * abs(value), call)
-                terms = power(terms, value)
-            else:
-                _limit(len(terms) + 2 * value, call)
-                for _ in range(value):
-                    terms = controlled(terms, on_zero=kind == "negctrl")
-        return terms
 
     def _terms_of(
         self, gate: BuiltIn | OwnGate, values: tuple[float, ...], call: GateCall
@@ -281,12 +226,12 @@ class Gates:
         for statement in body:
             if isinstance(statement, GateCall):
                 gate = self.find(statement.name, statement.place)
-                changes = self.changes(statement.modifiers)
+                changes = changes_of(self.names, statement.modifiers, self.notes)
                 self.check_call(statement, gate, changes)
                 inner = self._terms_of(gate, self.values(statement), statement)
-                inner = self._changed(inner, changes, statement)
+                inner = changed(inner, changes, statement)
                 operands = [wires[operand.name] for operand in statement.operands]
-                _limit(len(terms) + len(inner), outer)
+                limit(len(terms) + len(inner), outer)
                 terms.extend(moved(inner, operands))
             elif isinstance(statement, Loop):
                 for value in loop_values(self.names, statement):
@@ -365,7 +310,9 @@ class Gates:
                 for item in expression:
                     if item.kind == "name" and item.word not in values:
                         self.names.value((item,))
-            self.check_call(call, gate, self.changes(call.modifiers))
+            self.check_call(
+                call, gate, changes_of(self.names, call.modifiers, self.notes)
+            )
         except InputError as error:
             yield from error.faults
         finally:
@@ -408,13 +355,3 @@ def _calls(body: Sequence[Statement]) -> Iterator[GateCall]:
             yield statement
         elif isinstance(statement, Loop):
             yield from _calls(statement.body)
-
-
-def _limit(count: int, call: GateCall) -> None:
-    """Refuse a gate that would become too many operations."""
-    if count > MOST_OPERATIONS:
-        raise InputError.at(
-            call.place,
-            "too-large",
-            f"the gate '{call.name}' expands to more than {MOST_OPERATIONS} operations",
-        )

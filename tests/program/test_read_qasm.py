@@ -241,6 +241,10 @@ class TestGates:
         assert flat(program)[0] == "x q[1]" or flat(program)[0] == "x q[0]"
         assert "negctrl(2) was read as 2 nested negctrl" in program.assumed
 
+    def test_reading_of_cu3_is_noted(self):
+        program = read(f"{V2}qreg q[2];\ncu3(1,2,3) q[0],q[1];")
+        assert program.assumed.count("cu3 was read as in newer versions") == 1
+
     def test_places_are_those_of_the_call(self):
         program = read(f"{V3}qubit[3] q;\n\n  cswap q[0], q[1], q[2];")
         assert {(op.place.line, op.place.column) for op in program.operations} == {
@@ -384,6 +388,7 @@ class TestFaults:
             "ctrl(100000000) @ x q;",
             "pow(100000000) @ u(1, 2, 3) q;",
             "pow(2 ** 1000) @ rz(1) q;",
+            "gate g a { } pow(2 ** 100) @ g q;",
             "rz(10 ** 100000000) q;",
             "rz(1 << 100000000) q;",
             "rz(exp(1e9)) q;",
