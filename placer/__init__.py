@@ -8,11 +8,12 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
+import placer.check  # noqa: F401 - see the comment below
 from placer.device.model import Budget
 from placer.errors import CheckFailed, InputError, InternalError, NoPlan, OutOfTime
 
-# The module must be loaded before the function of the same name is bound: importing
-# it later would put the module in the function's place.
+# Modules that share a name with a function must be loaded before the function is
+# bound: importing them later would put the module in the function's place.
 from placer.plan import Plan, to_json
 from placer.version import VERSION
 

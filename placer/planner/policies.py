@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from placer.problem import every_recipe, why_not
+
 if TYPE_CHECKING:
     from placer.planner.placement import Instance
 
@@ -30,10 +32,24 @@ def allowed(instance: Instance, policy: str) -> tuple[Choice, str]:
             if plain or built.workspace == policy:
                 kept.append(index)
         if not kept:
-            op = instance.problem.program.operations[step]
-            return (
-                (),
-                f"'{op.name}' with {op.controls} controls has no such recipe here",
-            )
+            return (), _missing(instance, step, policy)
         rows.append(tuple(kept))
     return tuple(rows), ""
+
+
+def _missing(instance: Instance, step: int, policy: str) -> str:
+    """Say why a step has no recipe of a policy: the easiest one and what it lacks."""
+    problem = instance.problem
+    op = problem.program.operations[step]
+    call = f"'{op.name}' with {op.controls} controls"
+    for built in sorted(every_recipe(op), key=lambda b: len(b.slots)):
+        if built.workspace != policy:
+            continue
+        reason = why_not(built, problem.device, problem.program, problem.only)
+        if reason:
+            return f"{call}: {built.recipe} {_joined(reason)}"
+    return f"{call} has no such recipe"
+
+
+def _joined(reason: str) -> str:
+    return reason if reason.startswith(("needs", "excluded")) else f"fails: {reason}"

@@ -124,10 +124,10 @@ def nearest_change(seen: Sequence[Figures], budget: Budget) -> str:
     offers: list[tuple[float, str]] = []
     for figures in seen:
         broken = [limit for limit in limits_of(figures, budget) if not limit.holds]
-        if len(broken) != 1 or broken[0].limit is None:
+        if len(broken) != 1:
             continue
         limit = broken[0]
-        wanted = limit.limit
+        wanted = 0.0 if limit.limit is None else limit.limit
         if limit.unit == "probability":
             factor = (1.0 - limit.value) / max(1.0 - wanted, 1e-12)
             lower = _down(limit.value)
