@@ -124,15 +124,19 @@ def why_not(
             return "no link of the device has a level-2 gate"
     free = sum(1 for s in device.sites if s.in_service) - built.coarse.operands
     if len(built.slots) > free:
-        return f"needs {len(built.slots)} {_kinds(built)} sites, {free} exist"
+        return f"needs {_sites(len(built.slots), _kinds(built))}, {max(free, 0)} exist"
     clean = sum(1 for kind in built.slots if kind == "clean")
     held = _wires_always_held(program)
     spare = sum(1 for s in device.sites if s.in_service) - held
     if clean > spare:
-        return f"needs {clean} clean sites, {max(spare, 0)} can be free"
+        return f"needs {_sites(clean, 'clean')}, {max(spare, 0)} can be free"
     if only and not _allowed(built, only):
         return f"excluded by the limit to {', '.join(only)}"
     return None
+
+
+def _sites(count: int, kind: str) -> str:
+    return f"{count} {kind} site" + ("" if count == 1 else "s")
 
 
 def _kinds(built: Built) -> str:

@@ -59,22 +59,25 @@ def plan_of(
 
 
 def _why(outcome: Outcome) -> tuple[str, ...]:
-    """Say how the chosen plan stands against every fixed policy, in the plan itself."""
+    """Say how the chosen plan stands against the best fixed policy."""
     budget = outcome.instance.problem.budget
-    own = outcome.judged.figures.costs.total
-    notes = []
+    rows = []
     for policy in outcome.policies:
-        if policy.judged is None:
-            notes.append(f"{policy.policy} workspace everywhere: {policy.reason}")
-            continue
-        cost = policy.judged.figures.costs.total
-        difference = (cost - own) / own if own else 0.0
-        side = "more" if difference >= 0 else "less"
-        text = f"{abs(difference):.0%} {side} expected error than this plan"
-        if overrun(policy.judged.figures, budget) > 0:
-            text += ", does not fit"
-        notes.append(f"{policy.policy} workspace everywhere: {text}")
-    return tuple(notes)
+        if policy.judged is not None:
+            figures = policy.judged.figures
+            misses = overrun(figures, budget) > 0
+            rows.append((misses, figures.costs.total, policy.policy))
+    if not rows:
+        return ()
+    misses, cost, name = min(rows)
+    own = outcome.judged.figures.costs.total
+    difference = (cost - own) / own if own else 0.0
+    side = "more" if difference >= 0 else "less"
+    text = (
+        f"the best single policy is {name}: {abs(difference):.0%} {side} expected "
+        "error than this plan"
+    )
+    return (text + (", and it does not fit" if misses else ""),)
 
 
 def _steps(outcome: Outcome) -> tuple[Step, ...]:
