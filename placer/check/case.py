@@ -1,19 +1,17 @@
 """A plan file turned into what the rules look at, without believing any of it.
 
-In: the JSON text.  Out: a `Case` with program and device read again from the texts in
-the plan, or findings that say why there is none.
+In: the data of the JSON text.  Out: a `Case` with program and device read again from
+the texts in the plan, or findings that say why there is none.
 """
 
 from __future__ import annotations
 
-import json
+from collections import Counter
 from dataclasses import dataclass, field
-from pathlib import Path
 from typing import TYPE_CHECKING, Any, NamedTuple
 
-import jsonschema
-
 from placer.check.numbers import Numbers
+from placer.check.shape import faults_of
 from placer.device.read import read_device
 from placer.errors import InputError
 from placer.problem import as_written
@@ -21,11 +19,15 @@ from placer.program.read import read_program
 from placer.recipes import catalog
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from placer.device.model import Device
     from placer.program.model import Operation, Program
     from placer.recipes.circuit import Built
 
-SCHEMA = Path(__file__).parent.parent / "schemas" / "plan.schema.json"
+    Build = Callable[[str, str, int, float, bool], Built]
+
+Row = dict[str, Any]
 
 
 class Finding(NamedTuple):
@@ -49,14 +51,17 @@ class Lease(NamedTuple):
 
 @dataclass(slots=True)
 class Planned:
-    """One step as the plan states it, with its recipe built again."""
+    """One step as the plan states it, with its recipe built again.
+
+    `where` are the sites of the recipe's local wires: operands, then slots.
+    """
 
     op: Operation
     built: Built
     start: int
     end: int
     leases: tuple[Lease, ...]
-    where: list[int] = field(default_factory=list)
+    where: list[int]
 
     @property
     def label(self) -> str:
@@ -67,15 +72,21 @@ class Planned:
 
 @dataclass(slots=True)
 class Case:
-    """Everything the rules look at."""
+    """Everything the rules look at; `steps` in the order of the program."""
 
-    data: dict[str, Any]
+    data: Row
     program: Program
     device: Device
     numbers: Numbers
-    sites: list[int]
-    steps: list[Planned]
+    sites: list[int] = field(default_factory=list)
+    steps: list[Planned] = field(default_factory=list)
+    uses: dict[int, list[Planned]] = field(default_factory=dict)
     findings: list[Finding] = field(default_factory=list)
+
+    @property
+    def end(self) -> int:
+        """The planned end of the program: the largest end of all steps."""
+        return max((step.end for step in self.steps), default=0)
 
     def find(self, rule: str, where: str, what: str) -> None:
         """Record a broken rule."""
@@ -86,138 +97,193 @@ class Case:
         return sorted(self.steps, key=lambda s: (s.start, s.op.index))
 
 
-def open_case(data: dict[str, Any]) -> Case | list[Finding]:
-    """Return the case of a plan's data, or what makes it unreadable."""
-    faults = _against_schema(data)
-    if faults:
-        return faults
+def open_case(data: Row, build: Build = catalog.build) -> Case | list[Finding]:
+    """Return the case of a plan's data, or what makes it unreadable.
+
+    `build` makes recipes concrete; tests hand in circuits that are wrong.
+    """
+    texts = faults_of(data)
+    sources = None if texts else _sources(data, texts)
+    if sources is None:
+        return [Finding("plan-malformed", where, what) for where, what in texts]
+    program, device = sources
+    case = Case(data, program, device, Numbers(device))
+    _check_sources(case)
+    _check_header(case)
+    if any(found.rule == "source-changed" for found in case.findings):
+        return case.findings
+    if _read_wires(case) and _has_every_step(case):
+        _read_steps(case, build)
+    readable = len(case.steps) == len(case.program.operations)
+    return case if readable else case.findings
+
+
+def _sources(data: Row, texts: list[tuple[str, str]]) -> tuple[Program, Device] | None:
+    """Read program and device again; what fails is added to `texts`."""
+    stated, known = data["program"], data["device"]
+    program = device = None
     try:
         program = read_program(
-            data["program"]["text"],
-            data["program"]["path"],
-            open_inputs=data["open_inputs"],
+            stated["text"], stated["path"], open_inputs=data["open_inputs"]
         )
-        device = read_device(data["device"]["text"], data["device"]["path"])
     except InputError as error:
-        return [Finding("plan-malformed", "sources", str(error))]
-    findings = [
-        Finding("source-changed", name, f"the text has hash {found}, not {stated}")
-        for name, found, stated in (
-            ("program", program.hash, data["program"]["hash"]),
-            ("device", device.hash, data["device"]["hash"]),
-        )
-        if found != stated
-    ]
-    for name, found, stated in (
-        ("program name", program.name, data["program"]["name"]),
-        ("device name", device.name, data["device"]["name"]),
-        ("calibration date", device.calibrated, data["calibrated"]),
-        ("assumed start", program.assumed, data["assumed"]),
+        texts.append(("program", str(error)))
+    try:
+        device = read_device(known["text"], known["path"])
+    except InputError as error:
+        texts.append(("device", str(error)))
+    return None if program is None or device is None else (program, device)
+
+
+def _check_sources(case: Case) -> None:
+    """Hashes, names and languages are those of the texts."""
+    program, device = case.program, case.device
+    for where, key, found in (
+        ("program", "hash", program.hash),
+        ("program", "name", program.name),
+        ("program", "syntax", program.syntax),
+        ("device", "hash", device.hash),
+        ("device", "name", device.name),
+        ("device", "syntax", "yaml"),
     ):
-        if found != stated:
-            findings.append(Finding("source-changed", name, f"{stated} is {found}"))
-    if findings:
-        return findings
-    case = Case(data, program, device, Numbers(device), [], [], findings)
-    _read_wires(case)
-    if case.findings:
-        return case.findings
-    _read_steps(case)
-    return case.findings or case
+        stated = case.data[where][key]
+        if stated != found:
+            text = f"{key} {stated!r} is stated, the text gives {found!r}"
+            case.find("source-changed", where, text)
 
 
-def _against_schema(data: dict[str, Any]) -> list[Finding]:
-    schema = json.loads(SCHEMA.read_text(encoding="utf-8"))
-    validator = jsonschema.Draft202012Validator(schema)
-    found = []
-    for error in validator.iter_errors(data):
-        where = "/".join(str(part) for part in error.absolute_path) or "plan"
-        found.append(Finding("plan-malformed", where, error.message[:200]))
-        if len(found) == 20:
-            break
-    return sorted(found)
+def _check_header(case: Case) -> None:
+    """What the head of the plan repeats from its sources is repeated rightly."""
+    for where, found in (
+        ("calibrated", case.device.calibrated),
+        ("assumed", case.program.assumed),
+    ):
+        if case.data[where] != found:
+            text = f"{case.data[where]!r} is stated, the source gives {found!r}"
+            case.find("header-misstated", where, text)
 
 
-def _read_wires(case: Case) -> None:
-    stated = case.data["wires"]
-    names = case.program.wire_names
-    for name in sorted(set(names) - set(stated)):
-        case.find("wire-missing", name, "the plan gives it no site")
-    for name in sorted(set(stated) - set(names)):
-        case.find("wire-missing", name, "the program has no such wire")
-    if case.findings:
-        return
-    for name in names:
-        if known_site(case, stated[name], f"wire {name}"):
-            case.sites.append(stated[name])
+def _read_wires(case: Case) -> bool:
+    """Read the first site of every wire; whether all are there and exist."""
+    stated, names = case.data["wires"], case.program.wire_names
+    missing = sorted(set(names) ^ set(stated))
+    for name in missing:
+        what = "the program has no such wire" if name in stated else "it has no site"
+        case.find("wire-missing", f"wire {name}", what)
+    if missing:
+        return False
+    for register in case.program.registers:
+        for number, pin in enumerate(register.pins or ()):
+            name = names[register.first + number]
+            if stated[name] != pin:
+                text = f"site {stated[name]} is stated, the program says ${pin}"
+                case.find("wire-misplaced", f"wire {name}", text)
+    case.sites = [stated[name] for name in names]
+    labels = [f"wire {name}" for name in names]
+    # Every wire is asked, so that one pass finds all of them.
+    known = [_exists(case, s, w) for s, w in zip(case.sites, labels, strict=True)]
+    return all(known)
 
 
-def known_site(case: Case, site: int, where: str) -> bool:
-    """Whether a site exists and is in service; records a finding if not."""
+def _exists(case: Case, site: int, where: str) -> bool:
+    """Whether the device has a site; it must also be in service."""
     if not 0 <= site < len(case.device.sites):
-        case.find("site-unknown", where, f"there is no site {site}")
+        text = f"there is no site {site}, the device has {len(case.device.sites)}"
+        case.find("site-unknown", where, text)
         return False
     if not case.device.sites[site].in_service:
         case.find("site-out-of-service", where, f"site {site} is out of order")
-        return False
     return True
 
 
-def _read_steps(case: Case) -> None:
+def _has_every_step(case: Case) -> bool:
+    calls = Counter(row["index"] for row in case.data["calls"])
+    others = Counter(row[0] for row in case.data["others"])
+    wanted_calls = {op.index for op in case.program.operations if op.is_call}
+    wanted_others = {op.index for op in case.program.operations if not op.is_call}
+    before = len(case.findings)
+    for name, found, wanted in (
+        ("calls", calls, wanted_calls),
+        ("others", others, wanted_others),
+    ):
+        for index in sorted(set(found) | wanted):
+            times, expected = found[index], int(index in wanted)
+            if times != expected:
+                text = f"planned {times} times, expected {expected}"
+                case.find("step-missing", f"{name}, step {index}", text)
+            if len(case.findings) > before + 20:
+                return False
+    return len(case.findings) == before
+
+
+def _read_steps(case: Case, build: Build) -> None:
     calls = {row["index"]: row for row in case.data["calls"]}
     others = {row[0]: row for row in case.data["others"]}
-    stated = [row["index"] for row in case.data["calls"]]
-    stated += [row[0] for row in case.data["others"]]
-    expected = list(range(len(case.program.operations)))
-    if sorted(stated) != expected:
-        case.find(
-            "steps-incomplete",
-            "steps",
-            f"{len(stated)} steps are planned, the program has {len(expected)}",
-        )
-        return
     for op in case.program.operations:
-        if op.is_call != (op.index in calls):
-            case.find("steps-incomplete", f"step {op.index}", "its kind is misstated")
-        elif op.is_call:
-            _read_call(case, op, calls[op.index])
+        if op.is_call:
+            step = _read_call(case, op, calls[op.index], build)
         else:
             _, start, end = others[op.index]
             where = [case.sites[w] for w in op.wires]
-            case.steps.append(Planned(op, as_written(op), start, end, (), where))
+            step = Planned(op, as_written(op), start, end, (), where)
+        if step is not None:
+            case.steps.append(step)
+            for wire in op.wires:
+                case.uses.setdefault(wire, []).append(step)
 
 
-def _read_call(case: Case, op: Operation, row: dict[str, Any]) -> None:
+def _read_call(case: Case, op: Operation, row: Row, build: Build) -> Planned | None:
     label = f"step {op.index}"
-    if row["kind"] != op.kind or row["name"] != op.name or row["line"] != op.place.line:
-        case.find("steps-incomplete", label, "kind, name or line is misstated")
-        return
+    for key, found in (("kind", op.kind), ("name", op.name), ("line", op.place.line)):
+        if row[key] != found:
+            text = f"{key} {row[key]!r} is stated, the program says {found!r}"
+            case.find("step-misstated", label, text)
     names = catalog.recipe_names(op.kind, op.controls, op.inverse)
     if row["recipe"] not in names:
-        case.find(
-            "recipe-unknown",
-            label,
-            f"'{row['recipe']}' is no recipe of {op.kind} with {op.controls} controls",
-        )
-        return
+        text = f"'{row['recipe']}' is no recipe of {op.kind}, {op.controls} controls"
+        case.find("recipe-unknown", label, text)
+        return None
+    _check_lost(case, label, row, names)
     angle = op.params[0] if op.params else 0.0
-    built = catalog.build(row["recipe"], op.kind, op.controls, angle, op.inverse)
+    built = build(row["recipe"], op.kind, op.controls, angle, op.inverse)
+    if row["workspace"] != built.workspace:
+        text = f"'{row['workspace']}' is stated, '{built.recipe}' uses "
+        case.find("workspace-misstated", label, text + f"'{built.workspace}'")
     leases = tuple(
         Lease(r["slot"], r["site"], r["kind"], r["start"], r["end"], r["lender"])
         for r in row["leases"]
     )
-    good = all(known_site(case, one.site, f"{label} slot {one.slot}") for one in leases)
-    wanted = [(slot, kind) for slot, kind in enumerate(built.slots)]
-    found = [(one.slot, one.kind) for one in leases]
-    times = {(one.start, one.end) for one in leases} <= {(row["start"], row["end"])}
-    if found != wanted or not times or row["workspace"] != built.workspace:
-        case.find(
-            "lease-wrong",
-            label,
-            f"'{built.recipe}' needs slots {wanted} over [{row['start']}, "
-            f"{row['end']}), the plan leases {found}",
-        )
-        good = False
-    if good:
-        where = [case.sites[w] for w in op.wires] + [one.site for one in leases]
-        case.steps.append(Planned(op, built, row["start"], row["end"], leases, where))
+    good = _leases_match(case, label, row, built, leases)
+    known = [_exists(case, one.site, f"{label}, slot {one.slot}") for one in leases]
+    if not good or not all(known):
+        return None
+    where = [case.sites[w] for w in op.wires] + [one.site for one in leases]
+    return Planned(op, built, row["start"], row["end"], leases, where)
+
+
+def _check_lost(case: Case, label: str, row: Row, names: tuple[str, ...]) -> None:
+    lost = Counter(name for name, _ in row["lost"])
+    wanted = Counter(name for name in names if name != row["recipe"])
+    if lost != wanted:
+        odd = sorted(((lost - wanted) + (wanted - lost)).elements())
+        text = f"lost recipes are misstated: {', '.join(odd)} (chosen: "
+        case.find("lost-misstated", label, text + f"{row['recipe']})")
+
+
+def _leases_match(
+    case: Case, label: str, row: Row, built: Built, leases: tuple[Lease, ...]
+) -> bool:
+    """Slots and kinds of the recipe, the step's own time, no lender of clean slots."""
+    time = (row["start"], row["end"])
+    wanted = [(slot, kind, *time) for slot, kind in enumerate(built.slots)]
+    found = [(one.slot, one.kind, one.start, one.end) for one in leases]
+    if found != wanted:
+        text = f"'{built.recipe}' needs (slot, kind, start, end) {wanted}, not {found}"
+        case.find("lease-wrong", label, text)
+        # Other times can still be judged; other slots cannot.
+        return [one[:2] for one in found] == [one[:2] for one in wanted]
+    for one in leases:
+        if one.kind == "clean" and one.lender is not None:
+            text = f"slot {one.slot} is clean and cannot be lent by {one.lender}"
+            case.find("lease-wrong", label, text)
+    return True

@@ -1,4 +1,4 @@
-"""Compare the stated figures, bound, limits and verdict with what the check finds."""
+"""Compare the stated figures with those of the walk along the route."""
 
 from __future__ import annotations
 
@@ -7,107 +7,71 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from placer.check.case import Case
-    from placer.check.follow import Follower
+    from placer.check.follow import Walk
 
-CLOSE = 1e-9
+CLOSE = 1e-9  # sums of a few thousand shares, in another order
+COUNTS = (
+    "two_qubit_gates",
+    "one_qubit_gates",
+    "t_gates",
+    "measurements",
+    "level2_gates",
+)
 
 
-def check_figures(case: Case, walk: Follower) -> None:
-    """Apply the rules of figures, bound, limits and verdict."""
+def check_figures(case: Case, walk: Walk) -> None:
+    """Apply the rules of the figures; the route itself is sound."""
+    _check_made(case, walk)
+    _check_share(case, walk)
     stated = case.data["figures"]
-    route = case.data["route"]
-    worst, names = walk.worst()
-    made: dict[str, Any] = {
-        "sites": len(walk.touched),
-        "swaps": len(route["swaps"]),
-        "time_ns": walk.last,
-        "two_qubit_gates": walk.counts["two"],
-        "one_qubit_gates": walk.counts["one"] + walk.counts["tee"],
-        "t_gates": walk.counts["tee"],
-        "measurements": walk.counts["measure"],
-        "level2_gates": walk.counts["level2"],
-        "cost": sum(walk.costs.values()),
-    }
-    for name, value in made.items():
-        if stated[name] != value:
-            _misstated(case, name, stated[name], value)
+    success = success_of_costs(stated["costs"])
+    if not is_close(stated["success"], success):
+        text = f"{stated['success']} is stated, exp(-expected error) is {success}"
+        case.find("success-misstated", "figures", text)
+
+
+def success_of_costs(costs: dict[str, int]) -> float:
+    """Return exp(-total)."""
+    return math.exp(-sum(costs.values()) / 1e12)
+
+
+def is_close(one: float, two: float) -> bool:
+    """Whether two figures agree but for the order of a sum."""
+    return math.isclose(one, two, rel_tol=CLOSE, abs_tol=1e-300)
+
+
+def _check_made(case: Case, walk: Walk) -> None:
+    """Counts, time and costs.
+
+    Each wait is rounded up to whole 1e-12 on its own, and exp may differ in its last
+    bit between machines: decay may differ by one unit per wait.
+    """
+    stated = case.data["figures"]
+    made: dict[str, Any] = {name: walk.counts.get(name, 0) for name in COUNTS}
+    made["sites"] = len(walk.touched)
+    made["swaps"] = len(case.data["route"]["swaps"])
+    made["time_ns"] = walk.last
+    made["cost"] = sum(stated["costs"].values())
+    rows = [(name, stated[name], value, 0) for name, value in made.items()]
     for cause, value in walk.costs.items():
-        if stated["costs"][cause] != value:
-            _misstated(case, f"costs/{cause}", stated["costs"][cause], value)
-    if not math.isclose(stated["worst_share"], worst, rel_tol=CLOSE, abs_tol=CLOSE):
-        _misstated(case, "worst_share", stated["worst_share"], worst)
-    elif stated["worst_value"] not in names:
-        _misstated(case, "worst_value", stated["worst_value"], sorted(names))
-    success = math.exp(-stated["cost"] / 1e12)
-    if not math.isclose(stated["success"], success, rel_tol=CLOSE, abs_tol=1e-300):
-        case.find(
-            "success-misstated",
-            "figures",
-            f"{stated['success']} is stated, exp(-expected error) is {success}",
-        )
-    _check_bound(case)
-    _check_limits(case)
+        slack = walk.charges if cause == "decay" else 0
+        rows.append((f"costs/{cause}", stated["costs"][cause], value, slack))
+    for name, found, value, slack in rows:
+        if abs(found - value) > slack:
+            text = f"{found} is stated, the route gives {value}"
+            case.find("figures-misstated", name, text)
 
 
-def _misstated(case: Case, name: str, stated: object, made: object) -> None:
-    case.find("figures-misstated", name, f"{stated} is stated, the route gives {made}")
-
-
-def _check_bound(case: Case) -> None:
-    bound = case.data["bound"]
-    least, estimate = bound["least"], bound["estimate"]
-    if least is not None and least > estimate:
-        case.find("bound-above-cost", "bound", f"least {least} passes {estimate}")
-    if bound["proven"] != (least == estimate):
-        case.find(
-            "bound-above-cost", "bound", "'proven' does not follow from the bound"
-        )
-    if bound["floor"] > case.data["figures"]["cost"]:
-        case.find(
-            "bound-above-cost",
-            "bound",
-            f"floor {bound['floor']} passes {case.data['figures']['cost']}",
-        )
-    gap = None if least is None else (estimate - least) / estimate if estimate else 0.0
-    same = gap == bound["gap"] or (
-        gap is not None
-        and bound["gap"] is not None
-        and math.isclose(gap, bound["gap"], rel_tol=CLOSE, abs_tol=CLOSE)
-    )
-    if not same:
-        case.find("bound-above-cost", "bound", f"gap {bound['gap']} should be {gap}")
-
-
-def _check_limits(case: Case) -> None:
-    figures, budget = case.data["figures"], case.data["budget"]
-    expected = [
-        ("share of lifetime", figures["worst_share"], budget["share"], -1),
-        ("success", figures["success"], budget["least_success"], 1),
-        ("sites", figures["sites"], budget["most_sites"], -1),
-        ("run time", figures["time_ns"], budget["longest_ns"], -1),
-    ]
-    limits = case.data["verdict"]["limits"]
-    if [row["name"] for row in limits] != [row[0] for row in expected]:
-        case.find(
-            "limit-misstated", "verdict", "the limits are not those of the budget"
-        )
-        return
-    fits = True
-    for row, (name, value, limit, sense) in zip(limits, expected, strict=True):
-        holds = limit is None or (value - limit) * sense >= 0
-        fits = fits and holds
-        if row["value"] != value or row["limit"] != limit or row["holds"] != holds:
-            case.find(
-                "limit-misstated",
-                name,
-                f"{row['value']} against {row['limit']}, holds: {row['holds']}; "
-                f"should be {value} against {limit}, holds: {holds}",
-            )
-    verdict = case.data["verdict"]
-    begins = "fits" if fits else "does not fit"
-    if verdict["fits"] != fits or not verdict["sentence"].startswith(f"{begins}:"):
-        case.find(
-            "verdict-misstated",
-            "verdict",
-            f"'{verdict['sentence'][:60]}', fits={verdict['fits']}; limits say {fits}",
-        )
+def _check_share(case: Case, walk: Walk) -> None:
+    """The largest share, and who has it: of (nearly) equal ones any may be named."""
+    rows = [(share, walk.names[h]) for h, share in walk.shares.items()]
+    rows += [(share, f"{walk.names[h]} in level 2") for h, share in walk.stays.items()]
+    worst = max((share for share, _ in rows), default=0.0)
+    names = sorted({name for share, name in rows if is_close(share, worst)})
+    if worst == 0.0:
+        names = ["", *names]
+    stated = case.data["figures"]
+    share, name = stated["worst_share"], stated["worst_value"]
+    if not is_close(share, worst) or name not in names:
+        text = f"{share} of '{name}' is stated, the route gives {worst} of {names}"
+        case.find("share-misstated", "figures", text)

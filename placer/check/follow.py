@@ -1,7 +1,7 @@
 """Follow the included route: where everything is, when it happens, what it costs.
 
-In: a case.  Out: figures made again, and findings where the route breaks a rule.
-Plain Python, one operation after the other; nothing is shared with the planner.
+In: a case.  Out: a `Walk` with every figure made again, and findings where the route
+breaks a rule.  One operation after the other, from the definitions in DEVELOPERS.md.
 """
 
 from __future__ import annotations
@@ -10,12 +10,12 @@ import math
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
-from placer.device.fidelity import dephasing_rate, level2_process_fidelity
+from placer.check.layout import Act, Layout, lay_out
 from placer.units import cost_of_error, cost_of_fidelity
 
 if TYPE_CHECKING:
-    from placer.check.case import Case, Planned
-    from placer.recipes.circuit import Op
+    from placer.check.case import Case
+    from placer.device.model import Link
 
 CAUSES = (
     "two_qubit",
@@ -30,38 +30,40 @@ MOST_FINDINGS = 20
 
 
 @dataclass(slots=True)
-class Act:
-    """One fine operation on tokens, and whom it acts for on each of them."""
-
-    name: str
-    tokens: tuple[int, ...]
-    holders: tuple[int, ...]
-    needs: tuple[bool, ...]
-    enters: tuple[int, ...]
-    leaves: tuple[int, ...]
-    cause: int | None
-    step: Planned
-    end: int = -1
-
-
-@dataclass(slots=True)
 class Token:
-    """Where a token is, since when it is free, what lives on it."""
+    """What started on a site: where it is, since when it is free, what lives on it.
 
-    site: int  # where it started; names the token
-    moved: int = -1  # where it is now, -1 while it has not moved
+    `high` is the holder that is in level 2 on it, `stay` the share of that stay so
+    far, `value` the holder whose value it bears between two acts.
+    """
+
+    home: int
+    site: int
     free: int = 0
     place: int = 0
     charged: bool = False
-    valued: int | None = None
+    value: int | None = None
     high: int | None = None
     stay: float = 0.0
-    acts: list[int] = field(default_factory=list)
 
-    @property
-    def site_now(self) -> int:
-        """Return the site that the token is on."""
-        return self.site if self.moved < 0 else self.moved
+
+@dataclass(slots=True)
+class Walk:
+    """What a walk along the route adds up; `charges` counts the rounded waits."""
+
+    costs: dict[str, int] = field(default_factory=lambda: dict.fromkeys(CAUSES, 0))
+    counts: dict[str, int] = field(default_factory=dict)
+    charges: int = 0
+    touched: set[int] = field(default_factory=set)
+    last: int = 0
+    shares: dict[int, float] = field(default_factory=dict)
+    stays: dict[int, float] = field(default_factory=dict)
+    names: list[str] = field(default_factory=list)
+    is_broken: bool = False
+
+    def count(self, what: str) -> None:
+        """Add one to a count."""
+        self.counts[what] = self.counts.get(what, 0) + 1
 
 
 class Follower:
@@ -70,362 +72,253 @@ class Follower:
     def __init__(self, case: Case) -> None:
         self.case = case
         self.device = case.device
-        self.costs = dict.fromkeys(CAUSES, 0)
-        self.counts = {"one": 0, "tee": 0, "two": 0, "measure": 0, "level2": 0}
-        self.acts: list[Act] = []
-        self.heard: dict[int, list[int]] = {}
-        self.gates: list[int] = []
-        self.names: list[str] = list(case.program.wire_names)
-        self.values: set[int] = set()
-        self.tokens = [Token(s.id) for s in self.device.sites]
+        self.numbers = case.numbers
+        self.layout: Layout = lay_out(case)
+        self.walk = Walk(names=self.layout.names)
+        self.tokens = [Token(s.id, s.id) for s in case.device.sites]
         self.token_at = list(range(len(self.tokens)))
-        self.touched: set[int] = set()
-        self.share: dict[int, float] = {}
-        self.stays: dict[int, float] = {}
-        self.last = 0
-        self.is_broken = False
-        self._memo: dict[tuple[int, int, bool], int] = {}
-        self._lay_out()
-        self._mark_lives()
+        self._waits: dict[tuple[int, int, bool], int] = {}
+        self._prepare()
 
-    # --- the placed circuit
-
-    def _lay_out(self) -> None:
-        case = self.case
-        wires = len(case.program.wire_names)
-        index = {name: w for w, name in enumerate(case.program.wire_names)}
-        for w in range(wires):
-            if case.program.register_at(w).workspace:
-                self.values.add(w)
-        for step in case.order():
-            holders: list[int] = list(step.op.wires)
-            for lease in step.leases:
-                if lease.lender is None:
-                    holders.append(len(self.names))
-                    self.values.add(len(self.names))
-                    self.names.append(_slot_name(step, lease.slot))
-                else:
-                    holders.append(index.get(lease.lender, 0))
-                if lease.kind == "clean":
-                    self.costs["preparation"] += case.numbers.prep(lease.site)
-            self._add_acts(step, holders)
-        for w, site in enumerate(case.sites):
-            register = case.program.register_at(w)
-            used = any(w in s.op.wires for s in case.steps)
-            if register.start == "zero" and used:
-                self.costs["preparation"] += case.numbers.prep(site)
-            if register.start == "unknown" and (used or not register.workspace):
+    def _prepare(self) -> None:
+        """Charge fresh sites; wires that start unknown live from the beginning."""
+        program = self.case.program
+        cost = 0
+        for wire, site in enumerate(self.case.sites):
+            register = program.register_at(wire)
+            used = wire in self.case.uses
+            if register.start == "zero":
+                cost += self.numbers.prep(site) if used else 0
+            elif used or not register.workspace:
                 self.tokens[site].charged = True
-                self.touched.add(site)
+                self.walk.touched.add(site)
+        for step in self.case.steps:
+            clean = [one.site for one in step.leases if one.kind == "clean"]
+            cost += sum(self.numbers.prep(site) for site in clean)
+        self.walk.costs["preparation"] = cost
 
-    def _add_acts(self, step: Planned, holders: list[int]) -> None:
-        measured: dict[int, int] = {}
-        for op in step.built.fine.ops:
-            number = len(self.acts)
-            act = self._act(step, op, holders, measured)
-            self.acts.append(act)
-            if op.bit is not None:
-                measured[op.bit] = number
-            if act.cause is not None:
-                self.heard.setdefault(act.cause, []).append(number)
-            for token in act.tokens:
-                self.tokens[token].acts.append(number)
-            if op.name in ("cx", "cz", "level2"):
-                self.gates.append(number)
-
-    def _act(
-        self, step: Planned, op: Op, holders: list[int], measured: dict[int, int]
-    ) -> Act:
-        high = op.name == "level2"
-        return Act(
-            name=op.name,
-            tokens=tuple(step.where[w] for w in op.wires),
-            holders=tuple(holders[w] for w in op.wires),
-            needs=tuple(high and w in step.built.level2_wires for w in op.wires),
-            enters=tuple(step.where[w] for w in op.enters),
-            leaves=tuple(step.where[w] for w in op.leaves),
-            cause=None if op.condition is None else measured[op.condition],
-            step=step,
-        )
-
-    def _mark_lives(self) -> None:
-        """Note for each act and token whether its holder lives on after it."""
-        self.after: dict[tuple[int, int], tuple[bool, int | None]] = {}
-        wires = len(self.case.program.wire_names)
-        for token in self.tokens:
-            for here, number in enumerate(token.acts):
-                act = self.acts[number]
-                holder = act.holders[act.tokens.index(token.site)]
-                following: int | None = None
-                if here + 1 < len(token.acts):
-                    coming = self.acts[token.acts[here + 1]]
-                    following = coming.holders[coming.tokens.index(token.site)]
-                goes_on = following == holder
-                was_reset = act.name == "reset"
-                if goes_on:
-                    charged = not (was_reset and holder < wires)
-                else:
-                    charged = not (
-                        holder in self.values or act.name in ("reset", "measure")
-                    )
-                valued = goes_on and not was_reset and holder in self.values
-                self.after[number, token.site] = (charged, holder if valued else None)
-
-    # --- the walk
-
-    def walk(self) -> None:
-        """Follow the route to its end."""
+    def follow(self) -> Walk:
+        """Follow the route to its end, or to where it can go no further."""
         route = self.case.data["route"]
-        gaps, swaps = route["gaps"], route["swaps"]
-        if len(gaps) != len(swaps) + 1:
-            self._break("route-incomplete", "route", "gaps and swaps do not alternate")
-            return
         for token in self.tokens:
-            self._run_free(token.site)
-        for number, runs in enumerate(gaps):
-            if not self._gap(number, runs):
-                return
-            if number < len(swaps):
-                a, b = swaps[number]
-                if not self._swap(number, a, b):
-                    return
-        left = sum(1 for act in self.acts if act.end < 0)
-        if left:
-            self._break("route-incomplete", "route", f"{left} operations are not done")
-            return
+            self._run_free([token.home])
+        self._follow_all(route["gaps"], route["swaps"])
         for token in self.tokens:
             if token.charged:
-                self._charge(token, self.last)
+                self._charge(token, self.walk.last)
+        return self.walk
 
-    def _gap(self, number: int, runs: list[list[int]]) -> bool:
-        for first, last in runs:
-            for gate in range(first, last + 1):
-                is_known = 0 <= gate < len(self.gates)
-                if not is_known or self.acts[self.gates[gate]].end >= 0:
-                    text = f"gate {gate} is done twice or does not exist"
-                    self._break("route-incomplete", f"gap {number}", text)
-                    return False
-                if not self._gate(gate):
-                    return False
-        return True
+    def _follow_all(self, gaps: list[list[list[int]]], swaps: list[list[int]]) -> None:
+        """Do every two-body gate once, when all before it on its tokens is done."""
+        rule, gates = "route-incomplete", self.layout.gates
+        if len(gaps) != len(swaps) + 1:
+            text = f"{len(gaps)} gaps do not go between {len(swaps)} swaps"
+            self._break(rule, "route", text)
+            return
+        for number, runs in enumerate(gaps):
+            for first, last in sorted(runs):
+                # A run beyond the last gate is not walked through.
+                for gate in range(first, min(last, len(gates)) + 1):
+                    label = f"gap {number}, gate {gate}"
+                    if gate >= len(gates):
+                        self._break(rule, label, f"there are {len(gates)} gates")
+                        return
+                    act = gates[gate]
+                    if self.layout.acts[act].end >= 0:
+                        self._break(rule, label, "it is done twice")
+                        return
+                    if not self._is_next(act):
+                        text = "it comes before what it depends on"
+                        self._break(rule, label, text)
+                        return
+                    self._gate(act, label)
+            if number < len(swaps):
+                self._swap(f"swap {number}", *swaps[number])
+        left = [number for number in gates if self.layout.acts[number].end < 0]
+        if left:
+            text = f"{len(left)} of {len(gates)} two-body gates are not done"
+            self._break(rule, "route", text)
 
     def _break(self, rule: str, where: str, what: str) -> None:
-        self.is_broken = True
-        self.case.find(rule, where, what)
+        self.walk.is_broken = True
+        if sum(1 for found in self.case.findings if found.rule == rule) < MOST_FINDINGS:
+            self.case.find(rule, where, what)
 
-    def _front(self, number: int) -> bool:
-        act = self.acts[number]
-        for t in act.tokens:
-            token = self.tokens[t]
-            if token.place >= len(token.acts) or token.acts[token.place] != number:
+    # --- operations
+
+    def _is_next(self, number: int) -> bool:
+        act = self.layout.acts[number]
+        for home in act.tokens:
+            queue = self.layout.queues[home]
+            place = self.tokens[home].place
+            if place >= len(queue) or queue[place] != number:
                 return False
-        return act.cause is None or self.acts[act.cause].end >= 0
+        return act.cause is None or self.layout.acts[act.cause].end >= 0
 
-    def _run_free(self, token: int) -> None:
-        """Do everything without a link that is next on a token, and what that frees."""
-        waiting = [token]
+    def _run_free(self, homes: list[int]) -> None:
+        """Do everything without a link that is next, and what that frees."""
+        waiting = list(homes)
         while waiting:
-            here = self.tokens[waiting.pop()]
-            if here.place >= len(here.acts):
+            home = waiting.pop()
+            queue = self.layout.queues.get(home, [])
+            place = self.tokens[home].place
+            if place >= len(queue):
                 continue
-            number = here.acts[here.place]
-            act = self.acts[number]
-            if act.name in ("cx", "cz", "level2") or not self._front(number):
-                continue
-            self._perform(number)
-            waiting.extend(act.tokens)
-            for listener in self.heard.get(number, []):
-                waiting.extend(self.acts[listener].tokens)
+            number = queue[place]
+            act = self.layout.acts[number]
+            if not act.is_two_body and self._is_next(number):
+                self._perform(number, self._alone(act))
+                waiting.extend(act.tokens)
+                for listener in self.layout.heard.get(number, ()):
+                    waiting.extend(self.layout.acts[listener].tokens)
 
-    def _gate(self, gate: int) -> bool:
-        number = self.gates[gate]
-        act = self.acts[number]
-        label = f"gate {gate} of {act.step.label}"
-        if not self._front(number):
-            self._break("route-incomplete", label, "comes before what it depends on")
-            return False
-        first, second = (self.tokens[t].site_now for t in act.tokens)
-        link = self.device.link(first, second)
-        kind = (act.name == "level2", *act.needs)
-        if link is None or not self.device.is_usable(link):
-            self._break("route-off-link", label, f"{first} and {second} are not linked")
-            return False
-        if not self.case.numbers.fits(link, first, kind):
-            text = f"sites {first} and {second} offer no such level-2 gate"
-            self._break("level2-off-link", label, text)
-            return False
-        self._perform(number)
-        for t in act.tokens:
-            self._run_free(t)
-        for listener in self.heard.get(number, []):
-            for t in self.acts[listener].tokens:
-                self._run_free(t)
-        return True
-
-    def _time(self, act: Act) -> int:
-        sites = self.device.sites
-        here = self.tokens[act.tokens[0]].site_now
+    def _alone(self, act: Act) -> int:
+        """Count and price an operation without a link; return how long it takes."""
         if act.name == "barrier":
             return 0
+        site = self.device.sites[self.tokens[act.tokens[0]].site]
         if act.name == "measure":
-            return sites[here].readout_ns
+            self.walk.count("measurements")
+            self._pay("measurement", self.numbers.read(site.id))
+            return site.readout_ns
         if act.name == "reset":
-            return sites[here].reset_ns
-        if act.name in ("cx", "cz", "level2"):
-            link = self.device.link(here, self.tokens[act.tokens[1]].site_now)
-            if link is None:
-                return 0
-            return (link.level2_ns or 0) if act.name == "level2" else link.time_ns
-        if act.name in ("t", "tdg") and self.device.t_gate is not None:
-            return self.device.t_gate.time_ns
-        return sites[here].gate_ns
+            self._pay("preparation", self.numbers.wipe(site.id))
+            return site.reset_ns
+        self.walk.count("one_qubit_gates")
+        if act.name not in ("t", "tdg"):
+            self._pay("one_qubit", self.numbers.one(site.id))
+            return site.gate_ns
+        self.walk.count("t_gates")
+        self._pay("one_qubit", self.numbers.tee(site.id))
+        priced = self.device.t_gate
+        return site.gate_ns if priced is None else priced.time_ns
 
-    def _perform(self, number: int) -> None:
-        act = self.acts[number]
-        begin = max((self.tokens[t].free for t in act.tokens), default=0)
+    def _pay(self, cause: str, cost: int) -> None:
+        self.walk.costs[cause] += cost
+
+    def _linked(self, label: str, one: int, two: int) -> Link | None:
+        """Return the usable link of two sites; nothing with two bodies goes without."""
+        link = self.device.link(one, two)
+        if link is None or not self.device.is_usable(link):
+            self._break("route-off-link", label, f"no usable link of {one} and {two}")
+            return None
+        return link
+
+    def _gate(self, number: int, label: str) -> None:
+        act = self.layout.acts[number]
+        label = f"{label} of {act.step.label}"
+        one, two = (self.tokens[t].site for t in act.tokens)
+        link = self._linked(label, one, two)
+        time = 0
+        if link is not None and act.name == "level2":
+            if not self.numbers.fits(link, one, (True, *act.needs)):
+                text = f"sites {one} and {two} offer no such level-2 gate"
+                self._break("level2-off-link", label, text)
+            self.walk.count("level2_gates")
+            time = link.level2_ns or 0
+            self._pay("level2", cost_of_error(link.level2_error or 0.0))
+        elif link is not None:
+            self.walk.count("two_qubit_gates")
+            time = link.time_ns
+            self._pay("two_qubit", cost_of_error(link.error))
+        self._perform(number, time)
+        self._run_free(list(act.tokens))
+
+    def _perform(self, number: int, time: int) -> None:
+        act = self.layout.acts[number]
+        tokens = [self.tokens[home] for home in act.tokens]
+        begin = max((token.free for token in tokens), default=0)
         if act.cause is not None:
-            latency = self.case.numbers.latency_ns
-            begin = max(begin, self.acts[act.cause].end + latency)
-        done = begin + self._time(act)
-        self._price(act)
-        for t, holder in zip(act.tokens, act.holders, strict=True):
-            token = self.tokens[t]
-            if token.charged:
-                self._charge(token, begin)
-            span = done - begin
-            if token.valued is not None:
-                self._live(token, token.valued, begin - token.free)
-            if holder in self.values:
-                self._live(token, holder, span)
-            if t in act.enters:
+            answer = self.layout.acts[act.cause].end + self.numbers.latency_ns
+            begin = max(begin, answer)
+        done = begin + time
+        for token, holder in zip(tokens, act.holders, strict=True):
+            self._wait(token, begin)
+            if holder in self.layout.values:
+                self._live(token, holder, time)
+            if token.home in act.enters and token.high is None:
                 token.high, token.stay = holder, 0.0
-            elif token.high is not None:
-                self._stay(token, begin - token.free)
             if token.high is not None:
-                self._stay(token, span)
-            if t in act.leaves and token.high is not None:
-                best = max(self.stays.get(token.high, 0.0), token.stay)
-                self.stays[token.high] = best
+                self._stay(token, time)
+            if token.home in act.leaves and token.high is not None:
+                longest = max(self.walk.stays.get(token.high, 0.0), token.stay)
+                self.walk.stays[token.high] = longest
                 token.high = None
-            token.charged, token.valued = self.after[number, t]
+            token.charged, token.value = self.layout.lives[number, token.home]
             token.free = done
             token.place += 1
-            self.touched.add(token.site_now)
+            self.walk.touched.add(token.site)
         act.end = done
-        self.last = max(self.last, done)
+        self.walk.last = max(self.walk.last, done)
 
-    def _price(self, act: Act) -> None:
-        numbers = self.case.numbers
-        here = self.tokens[act.tokens[0]].site_now if act.tokens else 0
-        if act.name == "barrier":
+    def _swap(self, label: str, a: int, b: int) -> None:
+        """Exchange two tokens; over a level-2 link if one of them is in level 2."""
+        link = self._linked(label, a, b)
+        if link is None:
             return
-        if act.name in ("cx", "cz", "level2"):
-            link = self.device.link(here, self.tokens[act.tokens[1]].site_now)
-            if link is None:
-                return
-            if act.name == "level2":
-                self.costs["level2"] += cost_of_error(link.level2_error or 0.0)
-                self.counts["level2"] += 1
-            else:
-                self.costs["two_qubit"] += cost_of_error(link.error)
-                self.counts["two"] += 1
-        elif act.name == "measure":
-            self.costs["measurement"] += numbers.read(here)
-            self.counts["measure"] += 1
-        elif act.name == "reset":
-            self.costs["preparation"] += numbers.wipe(here)
-        elif act.name in ("t", "tdg"):
-            self.costs["one_qubit"] += numbers.tee(here)
-            self.counts["tee"] += 1
-        else:
-            self.costs["one_qubit"] += numbers.one(here)
-            self.counts["one"] += 1
-
-    def _swap(self, number: int, a: int, b: int) -> bool:
-        label = f"swap {number}"
-        count = len(self.device.sites)
-        link = self.device.link(a, b) if 0 <= a < count and 0 <= b < count else None
-        if link is None or not self.device.is_usable(link):
-            self._break("route-off-link", label, f"{a} and {b} are not linked")
-            return False
         one, two = self.tokens[self.token_at[a]], self.tokens[self.token_at[b]]
-        is_high = one.high is not None or two.high is not None
-        span, price = 3 * link.time_ns, 3 * cost_of_error(link.error)
-        if is_high:
-            sites = self.device.sites
-            able = sites[a].level2 is not None and sites[b].level2 is not None
-            if link.level2_error is None or link.level2_ns is None or not able:
-                text = f"something in level 2 moves between {a} and {b}"
+        time, cost = link.time_ns, cost_of_error(link.error)
+        if one.high is not None or two.high is not None:
+            if not self.numbers.fits(link, a, (True, True, True)):
+                text = f"{a} and {b} are exchanged while one holds level 2"
                 self._break("swap-while-level2", label, text)
-                return False
-            span = 3 * link.level2_ns
-            price = 3 * cost_of_error(link.level2_error)
+            time = link.level2_ns or 0
+            cost = cost_of_error(link.level2_error or 0.0)
         begin = max(one.free, two.free)
-        done = begin + span
-        self.costs["swaps"] += price
-        for token in (one, two):
-            if token.charged:
-                self._charge(token, begin)
-            if token.valued is not None:
-                self._live(token, token.valued, done - token.free)
+        self._pay("swaps", 3 * cost)
+        for token, goal in ((one, b), (two, a)):
+            self._wait(token, begin)
+            if token.value is not None:
+                self._live(token, token.value, 3 * time)
             if token.high is not None:
-                self._stay(token, done - token.free)
-            token.free = done
-        one.moved, two.moved = b, a
-        self.token_at[a], self.token_at[b] = two.site, one.site
-        self.touched |= {a, b}
-        self.last = max(self.last, done)
-        return True
+                self._stay(token, 3 * time)
+            token.free = begin + 3 * time
+            token.site = goal
+            self.token_at[goal] = token.home
+        self.walk.touched |= {a, b}
+        self.walk.last = max(self.walk.last, begin + 3 * time)
 
     # --- what passes with time
+
+    def _wait(self, token: Token, until: int) -> None:
+        """Let a token wait where it is: decay, life of its value, stay in level 2."""
+        if token.charged:
+            self._charge(token, until)
+        if token.value is not None:
+            self._live(token, token.value, until - token.free)
+        if token.high is not None:
+            self._stay(token, until - token.free)
 
     def _charge(self, token: Token, until: int) -> None:
         span = until - token.free
         if span <= 0:
             return
-        key = (token.site_now, span, token.high is not None)
-        if key not in self._memo:
-            self._memo[key] = self._wait(*key)
-        self.costs["decay"] += self._memo[key]
+        key = (token.site, span, token.high is not None)
+        if key not in self._waits:
+            self._waits[key] = self._decay(*key)
+        self.walk.charges += 1
+        self._pay("decay", self._waits[key])
 
-    def _wait(self, site: int, span_ns: int, is_high: bool) -> int:
+    def _decay(self, site: int, span_ns: int, is_high: bool) -> int:
         where = self.device.sites[site]
-        span = span_ns / 1000.0
+        time = span_ns / 1000
+        one = 1.0 if where.t1_us is None else math.exp(-time / where.t1_us)
         if is_high and where.level2 is not None:
-            dephasing = dephasing_rate(where.t1_us, where.t2_us)
-            return cost_of_fidelity(
-                level2_process_fidelity(
-                    span, where.t1_us, where.level2.t1_us, dephasing
-                )
-            )
-        one = 1.0 if where.t1_us is None else math.exp(-span / where.t1_us)
-        two = 1.0 if where.t2_us is None else math.exp(-span / where.t2_us)
-        return cost_of_fidelity((1.0 + one + 2.0 * two) / 4.0)
+            # Populations decay with G1 and G2, coherences with half the rates of
+            # their levels, and with dephasing by the squared distance of the levels.
+            pure = math.exp(-time * self.numbers.dephasing(site))
+            two = math.exp(-time / where.level2.t1_us)
+            near, mid = math.sqrt(one) * pure, math.sqrt(one * two) * pure
+            far = math.sqrt(two) * pure**4
+            return cost_of_fidelity((1 + one + two + 2 * (near + mid + far)) / 9)
+        two = 1.0 if where.t2_us is None else math.exp(-time / where.t2_us)
+        return cost_of_fidelity((1 + one + 2 * two) / 4)
 
     def _live(self, token: Token, holder: int, span: int) -> None:
-        life = self.case.numbers.lifetime_ns(token.site_now)
-        self.share[holder] = self.share.get(holder, 0.0) + span / life
+        share = span / self.numbers.lifetime_ns(token.site)
+        self.walk.shares[holder] = self.walk.shares.get(holder, 0.0) + share
 
     def _stay(self, token: Token, span: int) -> None:
-        level2 = self.device.sites[token.site_now].level2
+        level2 = self.device.sites[token.site].level2
         if level2 is not None:
-            token.stay += span / (level2.t1_us * 1e3)
-
-    def worst(self) -> tuple[float, set[str]]:
-        """Return the largest share, and the names of all that (nearly) reach it."""
-        rows = [(part, self.names[h]) for h, part in self.share.items()]
-        rows += [
-            (part, f"{self.names[h]} in level 2") for h, part in self.stays.items()
-        ]
-        if not rows:
-            return 0.0, {""}
-        most = max(part for part, _ in rows)
-        if most == 0.0:
-            return 0.0, {""} | {name for _, name in rows}
-        return most, {name for part, name in rows if part >= most * (1 - 1e-9)}
-
-
-def _slot_name(step: Planned, slot: int) -> str:
-    line = step.op.place.line
-    at = f" at line {line}" if line else f" in step {step.op.index}"
-    return f"slot {slot} of '{step.op.name}'{at}"
+            token.stay += span / (level2.t1_us * 1000)

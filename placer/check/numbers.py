@@ -9,13 +9,14 @@ from __future__ import annotations
 import heapq
 from typing import TYPE_CHECKING
 
-from placer.device.fidelity import dephasing_rate
 from placer.units import cost_of_error, rate_per_tick
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Callable, Iterable, Sequence
 
-    from placer.device.model import Device, Link, Site
+    from placer.check.base import Base
+    from placer.device.model import Device, Link
+    from placer.recipes.circuit import Built
 
 
 def lower_median(values: Iterable[int]) -> int:
@@ -45,13 +46,16 @@ class Numbers:
         for link in self.links:
             self.near[link.a].append(link)
             self.near[link.b].append(link)
+        # Recipes in nominal times, see `base`.
+        self.bases: dict[int, tuple[Built, Base]] = {}
+        self._one = [cost_of_error(s.gate_error) for s in device.sites]
         self._reach: dict[
             tuple[int, bool, bool, bool], tuple[dict[int, int], dict[int, int]]
         ] = {}
 
     def one(self, site: int) -> int:
         """Return the cost of a one-qubit gate."""
-        return cost_of_error(self.device.sites[site].gate_error)
+        return self._one[site]
 
     def tee(self, site: int) -> int:
         """Return the cost of a T gate."""
@@ -76,12 +80,17 @@ class Numbers:
         slope = (_inverse(where.t1_us) + 2.0 * _inverse(where.t2_us)) / 4.0
         return rate_per_tick(slope)
 
+    def dephasing(self, site: int) -> float:
+        """Return 1/Tphi = 1/T2 - 1/(2 T1) per us, no less than 0."""
+        where = self.device.sites[site]
+        return max(0.0, _inverse(where.t2_us) - 0.5 * _inverse(where.t1_us))
+
     def high_rate(self, site: int) -> int | None:
         """Return the slope of decay with three levels, `None` without level 2."""
         where = self.device.sites[site]
         if where.level2 is None:
             return None
-        dephasing = dephasing_rate(where.t1_us, where.t2_us)
+        dephasing = self.dephasing(site)
         both = _inverse(where.t1_us) + _inverse(where.level2.t1_us)
         return rate_per_tick((3.0 * both + 12.0 * dephasing) / 9.0)
 
@@ -146,7 +155,9 @@ class Numbers:
                     begun[v] = min(begun.get(v, total), total)
         return self._walk(begun, length)
 
-    def _walk(self, begun: dict[int, int], length) -> dict[int, int]:  # type: ignore[no-untyped-def]
+    def _walk(
+        self, begun: dict[int, int], length: Callable[[Link], int]
+    ) -> dict[int, int]:
         best = dict(begun)
         queue = [(cost, site) for site, cost in sorted(begun.items())]
         heapq.heapify(queue)
@@ -165,8 +176,3 @@ class Numbers:
 
 def _inverse(time_us: float | None) -> float:
     return 0.0 if time_us is None else 1.0 / time_us
-
-
-def site_times(site: Site) -> tuple[float | None, float | None]:
-    """Return T1 and T2 in us."""
-    return site.t1_us, site.t2_us

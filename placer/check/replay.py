@@ -1,204 +1,248 @@
-"""Replay the whole placed circuit on bits, many random inputs at once.
+"""Replay program and placed circuit on the same bits, a thousand inputs at once.
 
-In: a case.  Out: findings where the placed steps compute something else than the
-program, or where workspace is not what its lease says.  64 inputs ride in a word.
+In: a case.  Out: findings where a placed step gets or gives other bits than the
+program says, or where workspace is not what its lease says.
 
-A gate that branches (h, rx, ...) puts fresh random bits on its target, the same ones
-in the program and in the placed circuit: a state is a sum over paths, one per choice
-of those bits, and the two circuits agree if they agree along every path.  Phases are
-not seen here; `simulate` compares those, recipe by recipe.
+A gate that branches (h, rx, ...) puts fresh bits on its target, keyed by its step, the
+same ones in both circuits.  A state is a sum over paths, one per choice of those bits,
+and the amplitude of a path is the product of what each step does between its bits.  If
+every step gets and gives the same bits along every path, and does the same between them
+(`circuits` proves that, phases included), the two circuits are equal.
 """
 
 from __future__ import annotations
 
+import random
 from typing import TYPE_CHECKING
 
-import numpy as np
-
-from placer.check import simulate
+from placer.check.plain import one_qubit
 
 if TYPE_CHECKING:
-    from numpy.typing import NDArray
-
     from placer.check.case import Case, Planned
     from placer.program.model import Operation
-    from placer.recipes.circuit import Built
 
-    Words = NDArray[np.uint64]
+SAMPLES = 1024
+ALL_ON = (1 << SAMPLES) - 1
+FREE = 10  # wires that start unknown whose inputs are all tried: 2^10 = SAMPLES
+MOST_FINDINGS = 20
+SMALL = 1e-9
+TWO_WIRE = {"ch": "h", "crx": "rx", "cry": "ry"}
 
-WORDS = 4
-CLASSICAL = {"x", "cx", "ccx", "swap", "mcx"}
-BRANCHING = {"h", "sx", "sxdg", "rx", "ry", "u", "ch", "crx", "cry", "rxx"}
+Bits = list[int]
 
 
-class Replay:
-    """Program and placed circuit side by side on the same random inputs."""
+def random_bits(*key: object) -> int:
+    """Return random bits for all samples, by a key.
+
+    The first three eighths are fair; in each further eighth ones are more likely than
+    in the one before, since a product of many bits is hardly ever 1 by chance.
+    """
+    draw = random.Random(":".join(str(part) for part in key))
+    bits = draw.getrandbits(SAMPLES)
+    for eighth in range(3, 8):
+        bits |= draw.getrandbits(SAMPLES) & (ALL_ON << (SAMPLES * eighth // 8)) & ALL_ON
+    return bits
+
+
+def counting_bits(place: int) -> int:
+    """Return bit `place` of the number of each sample."""
+    run = 1 << place
+    block = ((1 << run) - 1) << run
+    return sum(block << (2 * run * n) for n in range(SAMPLES // (2 * run)))
+
+
+def check_replay(case: Case, seed: int) -> None:
+    """Placed steps get and give the program's bits; workspace comes back."""
+    _Replay(case, seed).check()
+
+
+class _Replay:
+    """The bits of the program's wires, and those of the sites."""
 
     def __init__(self, case: Case, seed: int) -> None:
         self.case = case
         self.seed = seed
-        draw = np.random.default_rng(seed)
-        self.sites: dict[int, Words] = {s.id: _random(draw) for s in case.device.sites}
-        self.wires: list[Words] = []
-        self.begun: set[int] = set()
-        for w in range(len(case.program.wire_names)):
-            register = case.program.register_at(w)
-            bits = _random(draw)
-            # Some inputs all on: products of many controls are rarely 1 by chance.
-            bits[0] = np.uint64(2**64 - 1) if WORDS > 1 else bits[0]
-            bits[1] |= _random(draw)[1] | _random(draw)[1]
-            if register.start == "zero" or register.workspace:
-                bits = np.zeros(WORDS, dtype=np.uint64)
-            self.wires.append(bits)
-            if register.start != "zero" and not register.workspace:
-                self.sites[case.sites[w]] = bits.copy()
-                self.begun.add(w)
-        self.fresh: set[int] = {s.id for s in case.device.sites}
-        self.fresh -= {case.sites[w] for w in self.begun}
-        for site in self.fresh:
-            self.sites[site] = np.zeros(WORDS, dtype=np.uint64)
+        program = case.program
+        self.wires: Bits = [0] * len(program.wire_names)
+        unknown = [w for w in range(len(self.wires)) if _is_unknown(case, w)]
+        for place, wire in enumerate(unknown):
+            counted = len(unknown) <= FREE
+            self.wires[wire] = (
+                counting_bits(place) if counted else random_bits(seed, "input", wire)
+            )
+        self.sites: Bits = [0] * len(case.device.sites)
+        for wire in unknown:
+            self.sites[case.sites[wire]] = self.wires[wire]
+        self.before: dict[int, Bits] = {}
+        self.after: dict[int, Bits] = {}
+        self.found = 0
+
+    def find(self, rule: str, where: str, what: str) -> None:
+        self.found += 1
+        self.case.find(rule, where, what)
 
     def check(self) -> None:
-        """Replay every step in placed order."""
-        done: set[int] = set()
+        program = self.case.program
+        for op in program.operations:
+            bits = [self.wires[w] for w in op.wires]
+            self.before[op.index] = list(bits)
+            meaning(op, bits, self.seed)
+            self.after[op.index] = bits
+            for at, value in zip(op.wires, bits, strict=True):
+                self.wires[at] = value
+        last = self._last_steps()
         for step in self.case.order():
-            for wire in step.op.wires:
-                if wire not in self.begun:
-                    self._begin(wire, step)
-            self._step(step)
-            done.add(step.op.index)
-            if len(self.case.findings) > 20:
+            if self.found > MOST_FINDINGS:
                 return
-        names = self.case.program.wire_names
-        for w in sorted(self.begun):
-            register = self.case.program.register_at(w)
-            site = self.case.sites[w]
-            if register.workspace:
-                if self.wires[w].any():
-                    text = "the program leaves this workspace other than |0>"
-                    self.case.find("slot-not-returned", names[w], text)
-            elif not np.array_equal(self.wires[w], self.sites[site]):
-                text = f"site {site} ends with another value than the program gives"
-                self.case.find("function-differs", names[w], text)
+            self._step(step)
+            for wire in step.op.wires:
+                register = program.register_at(wire)
+                if register.workspace and last[wire] == step.op.index:
+                    self._ends_clean(wire, step)
+        for number, value in enumerate(self.wires):
+            kept = not program.register_at(number).workspace
+            if not kept or not (_is_unknown(self.case, number) or number in last):
+                continue
+            if self.sites[self.case.sites[number]] != value:
+                name = program.wire_names[number]
+                text = f"site {self.case.sites[number]} ends with other values"
+                self.find("function-differs", f"wire {name}", text)
+        self._check_bits()
 
-    def _begin(self, w: int, step: Planned) -> None:
-        self.begun.add(w)
-        site = self.case.sites[w]
-        if self.sites[site].any():
-            name = self.case.program.wire_names[w]
-            text = f"site {site} is not in |0> when wire {name} begins"
-            self.case.find("slot-not-clean", step.label, text)
+    def _last_steps(self) -> dict[int, int]:
+        return {w: s.op.index for s in self.case.order() for w in s.op.wires}
+
+    def _ends_clean(self, wire: int, step: Planned) -> None:
+        site = self.case.sites[wire]
+        if self.sites[site]:
+            name = self.case.program.wire_names[wire]
+            text = f"site {site} is not in |0> after {step.label}, its last step"
+            self.find("workspace-not-returned", f"wire {name}", text)
+            self.sites[site] = 0
+
+    def _check_bits(self) -> None:
+        """Each classical bit is written last by the same measurement."""
+        planned = [step.op for step in self.case.order()]
+        for bit, index in _writers(self.case.program.operations).items():
+            other = _writers(planned)[bit]
+            if other != index:
+                text = f"step {other} writes it last, in the program step {index}"
+                self.find("function-differs", f"bit {bit}", text)
 
     def _step(self, step: Planned) -> None:
-        before = {one.site: self.sites[one.site].copy() for one in step.leases}
-        for lease in step.leases:
-            if lease.kind == "clean" and before[lease.site].any():
+        sites = self.sites
+        slots = step.where[len(step.op.wires) :]
+        held = [sites[p] for p in slots]
+        for lease, value in zip(step.leases, held, strict=True):
+            if lease.kind == "clean" and value:
                 text = f"site {lease.site} is leased as clean and is not in |0>"
-                self.case.find(
-                    "slot-not-clean", f"{step.label}, slot {lease.slot}", text
-                )
-        self._program(step.op)
-        self._placed(step)
-        for w in step.op.wires:
-            if not np.array_equal(self.wires[w], self.sites[self.case.sites[w]]):
-                name = self.case.program.wire_names[w]
-                text = f"wire {name} on site {self.case.sites[w]} differs after it"
-                self.case.find("function-differs", step.label, text)
-                self.sites[self.case.sites[w]] = self.wires[w].copy()
-        for lease in step.leases:
-            if np.array_equal(self.sites[lease.site], before[lease.site]):
-                continue
-            label = f"{step.label}, slot {lease.slot}"
-            if lease.kind == "clean":
+                self.find("slot-not-clean", f"{step.label}, slot {lease.slot}", text)
+        got = [sites[p] for p in step.where[: len(step.op.wires)]]
+        if step.op.is_call:
+            self._coarse(step)
+        else:
+            bits = list(got)
+            meaning(step.op, bits, self.seed)
+            for site, value in zip(step.where, bits, strict=True):
+                sites[site] = value
+        gave = [sites[p] for p in step.where[: len(step.op.wires)]]
+        self._compare(step, got, gave)
+        for lease, value in zip(step.leases, held, strict=True):
+            if lease.kind == "clean" and sites[lease.site]:
                 text = f"site {lease.site} is not back in |0>"
-                self.case.find("slot-not-returned", label, text)
-            else:
-                text = f"borrowed site {lease.site} does not come back unchanged"
-                self.case.find("borrowed-changed", label, text)
+                self.find("slot-not-returned", f"{step.label}, slot {lease.slot}", text)
+            elif lease.kind == "borrowed" and sites[lease.site] != value:
+                text = f"site {lease.site} does not come back as it was"
+                self.find("borrowed-changed", f"{step.label}, slot {lease.slot}", text)
 
-    def _program(self, op: Operation) -> None:
-        """Do a step as the program means it."""
-        wires = [self.wires[w] for w in op.wires]
-        if op.kind in ("mcx", "and"):
-            wires[-1] ^= np.bitwise_and.reduce(wires[:-1])
-        elif op.kind == "reset":
-            wires[0][:] = 0
-        elif op.kind == "gate":
-            self._gate(op, wires)
-
-    def _placed(self, step: Planned) -> None:
-        """Do a step as placed: its coarse circuit where that is made of bits."""
-        if step.op.kind == "reset":
-            self.sites[step.where[0]][:] = 0
+    def _compare(self, step: Planned, got: Bits, gave: Bits) -> None:
+        names = self.case.program.wire_names
+        pairs = ((self.before, got, "gets"), (self.after, gave, "gives"))
+        for expected, found, word in pairs:
+            wanted = expected[step.op.index]
+            if found == wanted:
+                continue
+            at = next(i for i, bits in enumerate(wanted) if bits != found[i])
+            text = f"{word} other values of {names[step.op.wires[at]]} on site "
+            self.find("function-differs", step.label, f"{text}{step.where[at]}")
+            # What follows from this is not said again.
+            for site, value in zip(step.where, self.after[step.op.index], strict=False):
+                self.sites[site] = value
             return
-        words = [self.sites[p] for p in step.where]
-        if step.op.kind == "gate":
-            self._gate(step.op, words)
-            return
-        ops = step.built.coarse.ops
-        if is_classical(step.built):
-            for op in ops:
-                local = [words[w] for w in op.wires]
-                if op.name == "swap":
-                    both = local[0].copy()
-                    local[0][:] = local[1]
-                    local[1][:] = both
-                elif op.name in CLASSICAL:
-                    if len(local) == 1:
-                        local[0] ^= np.uint64(2**64 - 1)
-                    else:
-                        local[-1] ^= np.bitwise_and.reduce(local[:-1])
-        elif step.op.kind in ("mcx", "and"):
-            # Its inner branches are followed by `simulate`; here it counts as done.
-            operands = words[: step.built.coarse.operands]
-            operands[-1] ^= np.bitwise_and.reduce(operands[:-1])
 
-    def _gate(self, op: Operation, words: list[Words]) -> None:
-        if op.name in ("x", "y"):
-            words[0] ^= np.uint64(2**64 - 1)
-        elif op.name in ("cx", "cy"):
-            words[1] ^= words[0]
-        elif op.name == "swap":
-            both = words[0].copy()
-            words[0][:] = words[1]
-            words[1][:] = both
-        elif op.name in BRANCHING:
-            draw = np.random.default_rng([self.seed, op.index])
-            targets = words if op.name == "rxx" else words[-1:]
-            for word in targets:
-                word[:] = _random(draw)
+    def _coarse(self, step: Planned) -> None:
+        """Run a recipe's coarse circuit on the sites of its wires.
+
+        Of two h on a wire the second takes back what the first did: between them the
+        wire is toggled by a phase.  After one h and a measurement it holds a random
+        outcome.
+        """
+        sites = self.sites
+        framed: dict[int, int] = {}
+        bits: dict[int, int] = {}
+        for number, op in enumerate(step.built.coarse.ops):
+            where = [step.where[w] for w in op.wires]
+            allowed = ALL_ON if op.condition is None else bits.get(op.condition, 0)
+            if op.name in ("x", "cx", "ccx", "mcx"):
+                for site in where[:-1]:
+                    allowed &= sites[site]
+                sites[where[-1]] ^= allowed
+            elif op.name == "swap":
+                sites[where[0]], sites[where[1]] = sites[where[1]], sites[where[0]]
+            elif op.name == "h" and where[0] in framed:
+                sites[where[0]] = framed.pop(where[0])
+            elif op.name == "h":
+                framed[where[0]] = sites[where[0]]
+                key = (self.seed, step.op.index, number)
+                sites[where[0]] = random_bits(*key)
+            elif op.name == "measure":
+                framed.pop(where[0], None)
+                bits[op.bit or 0] = sites[where[0]]
 
 
-def is_classical(built: Built) -> bool:
-    """Whether a coarse circuit consists of permutations of bits alone."""
-    return all(op.name in CLASSICAL and op.condition is None for op in built.coarse.ops)
+def _is_unknown(case: Case, wire: int) -> bool:
+    register = case.program.register_at(wire)
+    return register.start == "unknown" and not register.workspace
 
 
-def check_recipes(case: Case, seed: int) -> list[str]:
-    """Verify each distinct recipe's fine circuit, phases included; return notes."""
-    notes: list[str] = []
-    seen: set[tuple[object, ...]] = set()
-    for step in case.steps:
-        op = step.op
-        key = (step.built.recipe, op.kind, op.controls, op.params, op.inverse)
-        if not op.is_call or key in seen:
-            continue
-        seen.add(key)
-        angle = op.params[0] if op.params else 0.0
-        try:
-            found = simulate.differences(
-                step.built, angle, inverse=op.inverse, seed=seed
-            )
-        except simulate.TooWide:
-            notes.append(
-                f"'{step.built.recipe}' with {op.controls} controls branches too much "
-                "for exact simulation; replayed on bits only"
-            )
-            continue
-        for text in found:
-            case.find("function-differs", step.label, f"'{step.built.recipe}': {text}")
-    return notes
+def _writers(operations: tuple[Operation, ...] | list[Operation]) -> dict[str, int]:
+    return {op.bit: op.index for op in operations if op.bit is not None}
 
 
-def _random(draw: np.random.Generator) -> Words:
-    return draw.integers(0, 2**64, WORDS, dtype=np.uint64)
+def meaning(op: Operation, bits: Bits, seed: int) -> None:
+    """Do a step as the program means it, on the bits of its wires."""
+    if op.kind in ("mcx", "and"):
+        toggle = ALL_ON
+        for value in bits[:-1]:
+            toggle &= value
+        bits[-1] ^= toggle
+    elif op.kind == "reset":
+        bits[:] = [0] * len(bits)
+    elif op.kind == "gate":
+        _gate(op, bits, seed)
+
+
+def _gate(op: Operation, bits: Bits, seed: int) -> None:
+    if op.name in ("cx", "cy"):
+        bits[1] ^= bits[0]
+    elif op.name == "swap":
+        bits.reverse()
+    elif op.name == "rxx":
+        toggle = random_bits(seed, op.index)
+        bits[0] ^= toggle
+        bits[1] ^= toggle
+    elif op.name in TWO_WIRE:
+        made = _branch(op, TWO_WIRE[op.name], bits[1], seed)
+        bits[1] = (made & bits[0]) | (bits[1] & ~bits[0] & ALL_ON)
+    elif len(bits) == 1:
+        bits[0] = _branch(op, op.name, bits[0], seed)
+
+
+def _branch(op: Operation, name: str, bits: int, seed: int) -> int:
+    """Return the bits after a one-qubit gate: kept, flipped, or fresh."""
+    matrix = one_qubit(name, op.params)
+    if abs(matrix[0][1]) < SMALL:
+        return bits
+    if abs(matrix[0][0]) < SMALL:
+        return bits ^ ALL_ON
+    return random_bits(seed, op.index)
