@@ -30,12 +30,15 @@ def multi_controlled(seed: int, wires: int, gates: int, most: int) -> str:
     """Return a random program of `gates` gates with 1 to `most` controls."""
     draw = random.Random(seed)
     lines = ["OPENQASM 3.0;", 'include "stdgates.inc";', f"qubit[{wires}] q;"]
+    branching = 0
     for _ in range(gates):
         controls = min(draw.choice((1, 1, 2, 2, 3, draw.randint(1, most))), wires - 1)
         chosen = draw.sample(range(wires), controls + 1)
         operands = ", ".join(f"q[{w}]" for w in chosen)
         lines.append(f"ctrl({controls}) @ x {operands};")
-        if draw.random() < 0.2:
+        # The reader follows every branch, so only a few gates may branch.
+        if branching < 8 and draw.random() < 0.2:
+            branching += 1
             lines.append(f"h q[{draw.randrange(wires)}];")
     return "\n".join(lines) + "\n"
 
