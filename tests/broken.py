@@ -3,7 +3,7 @@
 A breaker takes the parsed JSON of a good plan and a random generator, and returns a
 spoiled copy, or `None` if this plan offers no chance.  Rules about what a recipe
 computes cannot be broken from the file alone, since recipes are built again by the
-check: their breakers spoil the catalog (see `SPOILED_RECIPES`).
+check: their breakers spoil what it builds (see `RECIPE_BREAKERS`).
 """
 
 from __future__ import annotations
@@ -12,13 +12,12 @@ import copy
 import dataclasses
 import hashlib
 import json
+import random
+import re
 from collections.abc import Callable
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from placer.recipes.circuit import Built, Circuit, Op
-
-if TYPE_CHECKING:
-    import random
 
 Data = dict[str, Any]
 Breaker = Callable[[Data, "random.Random"], Data | None]
@@ -74,7 +73,7 @@ def site_out_of_service(data: Data, draw: random.Random) -> Data | None:
     return spoiled
 
 
-def steps_incomplete(data: Data, draw: random.Random) -> Data | None:
+def step_missing(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
     rows = spoiled[draw.choice(["calls", "others"])]
     if not rows:
@@ -285,8 +284,9 @@ def figures_misstated(data: Data, draw: random.Random) -> Data | None:
     if draw.random() < 0.5:
         figures[name] += 1
     else:
+        # Of decay, one unit per wait is left to the last bit of exp.
         cause = draw.choice(sorted(figures["costs"]))
-        figures["costs"][cause] += 1
+        figures["costs"][cause] += 10**6 if cause == "decay" else 1
     return spoiled
 
 
@@ -300,15 +300,99 @@ def success_misstated(data: Data, _: random.Random) -> Data | None:
     return spoiled
 
 
-def bound_above_cost(data: Data, draw: random.Random) -> Data | None:
+def _with_bound(data: Data, **changes: Any) -> Data:
+    """Return the plan with another bound, gap and proof as they follow from it."""
     spoiled = copy.deepcopy(data)
-    if draw.random() < 0.5:
-        spoiled["bound"]["floor"] = spoiled["figures"]["cost"] + 1
-        return spoiled
     bound = spoiled["bound"]
-    bound["least"] = bound["estimate"] + 1
-    bound["gap"] = -1 / bound["estimate"]
-    bound["proven"] = False
+    bound.update(changes)
+    estimate, least = bound["estimate"], bound["least"]
+    bound["proven"] = least == estimate
+    bound["gap"] = None if least is None else (estimate - least) / estimate
+    return spoiled
+
+
+def bound_above_estimate(data: Data, draw: random.Random) -> Data | None:
+    return _with_bound(data, least=data["bound"]["estimate"] + draw.randint(1, 10**9))
+
+
+def floor_above_cost(data: Data, draw: random.Random) -> Data | None:
+    return _with_bound(data, floor=data["figures"]["cost"] + draw.randint(1, 10**9))
+
+
+def proof_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    bound = spoiled["bound"]
+    kind = draw.randrange(3)
+    if kind == 0:
+        bound["proven"] = not bound["proven"]
+    elif kind == 1:
+        bound["gap"] = None if bound["gap"] is not None else 0.5
+    else:
+        bound["gap"] = (bound["gap"] or 0.0) + 1e-3
+    return spoiled
+
+
+def policy_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    row = draw.choice(spoiled["policies"])
+    kind = draw.randrange(4)
+    if kind == 0:
+        row["fits"] = not row["fits"]
+    elif kind == 1:
+        row["possible"] = not row["possible"]
+    elif kind == 2 and row["figures"] is not None:
+        row["figures"]["success"] *= 0.99
+    else:
+        spoiled["policies"].append(copy.deepcopy(row))
+    return spoiled
+
+
+def header_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    key = draw.choice(["calibrated", "assumed"])
+    spoiled[key] += " or so"
+    return spoiled
+
+
+def step_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    call = draw.choice(spoiled["calls"])
+    kind = draw.randrange(3)
+    if kind == 0:
+        call["line"] += draw.randint(1, 5)
+    elif kind == 1:
+        call["kind"] = {"mcx": "mcz"}.get(call["kind"], "mcx")
+    else:
+        call["name"] += "x"
+    return spoiled
+
+
+def workspace_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    call = draw.choice(spoiled["calls"])
+    others = {"clean", "borrowed", "level2", "none"} - {call["workspace"]}
+    call["workspace"] = draw.choice(sorted(others))
+    return spoiled
+
+
+def lost_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    call = draw.choice(spoiled["calls"])
+    if call["lost"] and draw.random() < 0.5:
+        call["lost"].pop(draw.randrange(len(call["lost"])))
+    else:
+        name = draw.choice([call["recipe"], "no-such-recipe"])
+        call["lost"].append([name, "no reason"])
+    return spoiled
+
+
+def share_misstated(data: Data, draw: random.Random) -> Data | None:
+    spoiled = copy.deepcopy(data)
+    figures = spoiled["figures"]
+    if draw.random() < 0.5:
+        figures["worst_value"] += "?"
+    else:
+        figures["worst_share"] = figures["worst_share"] * 0.999 + 1e-6
     return spoiled
 
 
@@ -331,7 +415,7 @@ BREAKERS: dict[str, Breaker] = {
     "wire-missing": wire_missing,
     "site-unknown": site_unknown,
     "site-out-of-service": site_out_of_service,
-    "steps-incomplete": steps_incomplete,
+    "step-missing": step_missing,
     "recipe-unknown": recipe_unknown,
     "recipe-excluded": recipe_excluded,
     "capability-missing": capability_missing,
@@ -348,10 +432,91 @@ BREAKERS: dict[str, Breaker] = {
     "route-off-link": route_off_link,
     "figures-misstated": figures_misstated,
     "success-misstated": success_misstated,
-    "bound-above-cost": bound_above_cost,
+    "bound-above-estimate": bound_above_estimate,
+    "floor-above-cost": floor_above_cost,
+    "proof-misstated": proof_misstated,
+    "policy-misstated": policy_misstated,
+    "header-misstated": header_misstated,
+    "step-misstated": step_misstated,
+    "workspace-misstated": workspace_misstated,
+    "lost-misstated": lost_misstated,
+    "share-misstated": share_misstated,
     "limit-misstated": limit_misstated,
     "verdict-misstated": verdict_misstated,
 }
+
+
+def link_out_of_reach(data: Data, draw: random.Random) -> Data | None:
+    # One site alone keeps its third level: two wires that both need it cannot meet.
+    if not any(c["workspace"] == "level2" for c in data["calls"]):
+        return None
+    kept = draw.choice(_level2_sites(data))
+    return _with_device(data, _only_level2(data["device"]["text"], [kept]))
+
+
+def _level2_sites(data: Data) -> list[int]:
+    text = data["device"]["text"].split("level2_sites: [")[1].split("]")[0]
+    return [int(site) for site in text.split(",")]
+
+
+def _only_level2(text: str, kept: list[int]) -> str:
+    """Return a device text in which only some sites keep their third level."""
+    lines = []
+    for line in text.splitlines():
+        site = re.match(r"  (\d+): ", line)
+        if line.lstrip().startswith("level2_sites:"):
+            lines.append(f"  level2_sites: [{', '.join(map(str, kept))}]")
+        elif site and int(site[1]) not in kept:
+            lines.append(re.sub(r", level2: \{[^}]*\}", "", line))
+        else:
+            lines.append(line)
+    return "\n".join(lines) + "\n"
+
+
+def slot_not_clean(data: Data, draw: random.Random) -> Data | None:
+    # A clean slot where a wire sits that may hold anything.
+    if data["program"]["syntax"] != "openqasm3":
+        return None
+    spoiled = copy.deepcopy(data)
+    leases = [x for c in spoiled["calls"] for x in c["leases"] if x["kind"] == "clean"]
+    if not leases:
+        return None
+    draw.choice(leases)["site"] = draw.choice(sorted(spoiled["wires"].values()))
+    return spoiled
+
+
+def function_differs(data: Data, draw: random.Random) -> Data | None:
+    # Two wires that may hold anything on one site: one of them gets lost.
+    if data["program"]["syntax"] != "openqasm3":
+        return None
+    spoiled = copy.deepcopy(data)
+    used = {name for call in data["calls"] for name in _operands(data, call)}
+    first, second = draw.sample(sorted(used), 2)
+    spoiled["wires"][first] = spoiled["wires"][second]
+    return spoiled
+
+
+def workspace_not_returned(data: Data, draw: random.Random) -> Data | None:
+    from placer.program.read import read_program
+
+    source = data["program"]
+    program = read_program(source["text"], source["path"])
+    steps: dict[int, list[int]] = {}
+    for op in program.operations:
+        for wire in op.wires:
+            if program.register_at(wire).workspace:
+                steps.setdefault(wire, []).append(op.index)
+    calls = {call["index"]: call for call in data["calls"]}
+    computing = [steps[w][0] for w in sorted(steps) if steps[w][0] in calls]
+    if not computing:
+        return None
+    spoiled = copy.deepcopy(data)
+    index = draw.choice(computing)
+    call = next(c for c in spoiled["calls"] if c["index"] == index)
+    # What computes the value comes after everything else, also after its cleanup.
+    ends = [row[2] for row in data["others"]] + [c["end"] for c in data["calls"]]
+    _shift(call, max(ends) + draw.randint(0, 100) - call["start"])
+    return spoiled
 
 
 def _edited(built: Built, change: Callable[[Circuit], Circuit]) -> Built:
@@ -360,37 +525,51 @@ def _edited(built: Built, change: Callable[[Circuit], Circuit]) -> Built:
     )
 
 
-def leave_slot_set(built: Built) -> Built:
-    """Return the recipe with its first clean slot flipped at the end."""
-    slot = built.fine.operands + built.slots.index("clean")
-    return _edited(
-        built,
-        lambda c: dataclasses.replace(c, ops=(*c.ops, Op("x", (slot,)))),
+def _with_flip(built: Built, wire: int) -> Built:
+    """Return the recipe with a wire flipped once too often, at the end."""
+    flip = Op("x", (wire,))
+    return _edited(built, lambda c: dataclasses.replace(c, ops=(*c.ops, flip)))
+
+
+def leave_slot_set(built: Built, draw: random.Random) -> Built | None:
+    clean = [s for s, kind in enumerate(built.slots) if kind == "clean"]
+    return (
+        _with_flip(built, built.fine.operands + draw.choice(clean)) if clean else None
     )
 
 
-def leave_borrowed_changed(built: Built) -> Built:
-    """Return the recipe with its first borrowed slot flipped at the end."""
-    slot = built.fine.operands + built.slots.index("borrowed")
-    return _edited(
-        built,
-        lambda c: dataclasses.replace(c, ops=(*c.ops, Op("x", (slot,)))),
-    )
+def leave_borrowed_changed(built: Built, draw: random.Random) -> Built | None:
+    lent = [s for s, kind in enumerate(built.slots) if kind == "borrowed"]
+    return _with_flip(built, built.fine.operands + draw.choice(lent)) if lent else None
 
 
-def flip_target(built: Built) -> Built:
-    """Return the recipe with its target flipped once too often."""
-    target = built.fine.operands - 1
-    return _edited(
-        built,
-        lambda c: dataclasses.replace(c, ops=(*c.ops, Op("x", (target,)))),
-    )
+def wrong_gate(built: Built, draw: random.Random) -> Built | None:
+    """Return the recipe without one gate, or with one turned the other way."""
+    level = draw.choice(["fine", "coarse"])
+    circuit = getattr(built, level)
+    at = draw.randrange(len(circuit.ops))
+    op = circuit.ops[at]
+    mirrors = {"t": "tdg", "tdg": "t", "s": "sdg", "sdg": "s"}
+    other: tuple[Op, ...] = ()
+    if op.name in mirrors and draw.random() < 0.5:
+        other = (dataclasses.replace(op, name=mirrors[op.name]),)
+    ops = (*circuit.ops[:at], *other, *circuit.ops[at + 1 :])
+    made = dataclasses.replace(circuit, ops=ops)
+    return dataclasses.replace(built, **{level: made})
 
 
-SPOILED_RECIPES: dict[str, tuple[str, Callable[[Built], Built]]] = {
-    "slot-not-returned": ("clean", leave_slot_set),
-    "borrowed-changed": ("borrowed", leave_borrowed_changed),
-    "function-differs": ("", flip_target),
+BREAKERS.update(
+    {
+        "link-out-of-reach": link_out_of_reach,
+        "slot-not-clean": slot_not_clean,
+        "function-differs": function_differs,
+        "workspace-not-returned": workspace_not_returned,
+    }
+)
+RECIPE_BREAKERS: dict[str, Callable[[Built, random.Random], Built | None]] = {
+    "slot-not-returned": leave_slot_set,
+    "borrowed-changed": leave_borrowed_changed,
+    "recipe-wrong": wrong_gate,
 }
 
 
@@ -444,17 +623,8 @@ def level2_off_link(data: Data, draw: random.Random) -> Data | None:
         return None
     inner = _operands(data, draw.choice(used))[1:-1]
     site = data["wires"][draw.choice(inner)]
-    out = []
-    for line in data["device"]["text"].splitlines():
-        kept = line
-        if line.lstrip().startswith("level2_sites:"):
-            head, listed = line.split("[")
-            left = [x for x in listed.rstrip("]").split(",") if int(x) != site]
-            kept = f"{head}[{','.join(left)}]"
-        if line.startswith(f"  {site}:"):
-            kept = line[: line.index(", level2")] + "}"
-        out.append(kept)
-    return _with_device(data, "\n".join(out) + "\n")
+    left = [kept for kept in _level2_sites(data) if kept != site]
+    return _with_device(data, _only_level2(data["device"]["text"], left))
 
 
 def swap_while_level2(data: Data, draw: random.Random) -> Data | None:
@@ -463,4 +633,3 @@ def swap_while_level2(data: Data, draw: random.Random) -> Data | None:
 
 BREAKERS["level2-off-link"] = level2_off_link
 BREAKERS["swap-while-level2"] = swap_while_level2
-SPOILED_RECIPES["slot-not-clean"] = ("clean", leave_slot_set)

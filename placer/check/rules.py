@@ -26,7 +26,6 @@ RULES: tuple[Rule, ...] = tuple(
         ("step-missing", "every step of the program is planned exactly once"),
         ("step-misstated", "kind, name and line of a call are those of the program"),
         ("wire-missing", "the plan names a site for every wire, and for nothing else"),
-        ("wire-misplaced", "a wire that the program pins to a site starts there"),
         ("site-unknown", "every site named exists on the device"),
         ("site-out-of-service", "nothing sits on a site that is out of order"),
         ("recipe-unknown", "every call names a recipe that exists for its size"),
