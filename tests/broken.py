@@ -89,7 +89,9 @@ def recipe_unknown(data: Data, draw: random.Random) -> Data | None:
 
 
 def recipe_excluded(data: Data, draw: random.Random) -> Data | None:
-    used = {c["workspace"] for c in data["calls"] if c["recipe"] != "toffoli"}
+    # Two controls without a slot leave nothing to choose, and are always allowed.
+    plain = ("toffoli", "and-mirror", "and-measured")
+    used = {c["workspace"] for c in data["calls"] if c["recipe"] not in plain}
     others = sorted({"clean", "borrowed", "level2", "none"} - used)
     if not used or data["only"]:
         return None
