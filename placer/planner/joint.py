@@ -1,27 +1,29 @@
-"""Solve the joint model: first for solutions, then for its bound.
+"""Solve the joint model: try every place of the wires, then leave it to the solver.
 
 In: an instance and the choices that are left open.  Out: the best placement found, a
-proven lower bound of the placement cost, and the solver's status.  The result is
-re-costed by `placement.evaluate`, never believed.
+proven lower bound of the placement cost, and the status.  Every result is re-costed
+by `placement.evaluate`, never believed.
 """
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 from typing import Any, Literal
 
 from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
+from placer.planner.cpsat import Run
 from placer.planner.model import JointModel, Open, everything
 from placer.planner.placement import (
     Instance,
     Misfit,
     Placement,
     evaluate,
+    keeps_limits,
     schedule,
 )
+from placer.planner.proof import can_prove, prove
 
 __all__ = ["Answer", "Open", "everything", "solve", "tighten"]
 
@@ -30,7 +32,7 @@ Status = Literal["best", "feasible", "none", "out-of-work"]
 
 @dataclass(frozen=True, slots=True)
 class Answer:
-    """What the solver said; `bound` is `None` where it proved nothing."""
+    """What was found; `bound` is `None` where nothing was proved."""
 
     status: Status
     placement: Placement | None
@@ -49,91 +51,141 @@ def solve(
 ) -> Answer:
     """Solve the joint model within a deterministic amount of work.
 
-    `work` is CP-SAT's deterministic time.  A hint must be a valid placement.
+    `work` is CP-SAT's deterministic time, or what the walk over all sites counts as
+    such.  A hint must be a valid placement; one that is inside the open choices and
+    within the limits is never answered by a dearer one.
 
     Raises
     ------
     InternalError
         If the model is invalid, or a solution does not survive its re-costing.
     """
-    joint = JointModel(instance, choice)
-    if hint is not None:
-        joint.hint(hint)
-    model = joint.model
-    fault = model.validate()
-    if fault:
-        raise InternalError(f"the joint model is invalid: {fault}")
-    first = _Run(model, joint.constant, seed=seed, workers=workers)
-    status = first.solve(0.5 * work, by_bound=False)
-    if status == cp_model.INFEASIBLE:
-        return Answer("none", None, None, None)
-    bound = first.bound()
-    if status == cp_model.UNKNOWN:
-        return Answer("out-of-work", None, None, bound)
-    placement = tighten(instance, joint.read(first.solver))
-    cost = evaluate(instance, placement).cost
-    if status != cp_model.OPTIMAL and work > WORTH_A_SECOND_RUN:
-        # A second search raises the bound; the first one's solution is its hint.
-        joint.hint(placement)
-        second = _Run(model, joint.constant, seed=seed, workers=workers)
-        status = second.solve(0.5 * work, by_bound=True)
-        if status == cp_model.INFEASIBLE:
-            raise InternalError("the joint model denies its own solution")
-        bound = max(bound, second.bound())
-        if status in (cp_model.OPTIMAL, cp_model.FEASIBLE):
-            other = tighten(instance, joint.read(second.solver))
-            other_cost = evaluate(instance, other).cost
-            if other_cost < cost:
-                placement, cost = other, other_cost
-        first = second if status == cp_model.OPTIMAL else first
-    if status == cp_model.OPTIMAL or bound == cost:
-        stated = bound if bound == cost else first.objective()
-        if cost > stated:
-            raise InternalError(f"re-costing gives {cost}, the solver said {stated}")
-        return Answer("best", placement, cost, cost)
-    return Answer("feasible", placement, cost, min(bound, cost))
+    return _Solve(instance, choice, seed, workers).run(work, hint)
 
 
 WORTH_A_SECOND_RUN = 1.0
 """Deterministic work from which a second search, made for bounds, pays."""
 
 
-class _Run:
-    """One search of CP-SAT; values and bounds are read only after its status."""
+class _Solve:
+    """The best placement and the best bound so far, from one search to the next."""
 
     def __init__(
-        self, model: cp_model.CpModel, constant: int, *, seed: int, workers: int
+        self, instance: Instance, choice: Open, seed: int, workers: int
     ) -> None:
-        self.model = model
-        self.constant = constant
-        self.solver = cp_model.CpSolver()
-        parameters = self.solver.parameters
-        parameters.random_seed = seed
-        parameters.num_workers = workers
-        parameters.interleave_search = workers > 1
-        # Measured: full linear relaxations prove most, see DEVELOPERS.md.
-        parameters.linearization_level = 2
+        self.instance = instance
+        self.choice = choice
+        self.seed = seed
+        self.workers = workers
+        self.placement: Placement | None = None
+        self.cost: int | None = None
+        self.bound: int | None = None
 
-    def solve(self, work: float, *, by_bound: bool) -> Any:
-        """Search within a deterministic amount of work and return the status."""
-        self.solver.parameters.max_deterministic_time = work
-        self.solver.parameters.optimize_with_lb_tree_search = by_bound
-        status = self.solver.solve(self.model)
-        if status == cp_model.MODEL_INVALID:
-            info = self.solver.solution_info()
-            raise InternalError(f"the joint model is invalid: {info}")
+    def run(self, work: float, hint: Placement | None) -> Answer:
+        """Search in stages until the cost meets the bound or the work is done."""
+        if hint is not None and _is_allowed(self.instance, self.choice, hint):
+            self._take(hint)
+        is_walked = False
+        if self.placement is not None:
+            is_walked = self._walk(work)
+            if self._is_proven():
+                return self._answer()
+        joint = JointModel(self.instance, self.choice)
+        start = self.placement or hint
+        if start is not None:
+            joint.hint(start)
+        fault = joint.model.validate()
+        if fault:
+            raise InternalError(f"the joint model is invalid: {fault}")
+        status = self._search(joint, 0.5 * work, by_bound=False)
+        if status == cp_model.INFEASIBLE:
+            if self.placement is not None:
+                raise InternalError("the joint model denies a placement that exists")
+            return Answer("none", None, None, None)
+        if self.placement is None:
+            return Answer("out-of-work", None, None, self.bound)
+        if not is_walked and not self._is_proven():
+            self._walk(work)
+        if not self._is_proven() and work > WORTH_A_SECOND_RUN:
+            # A second search raises the bound; the first one's solution is its hint.
+            joint.hint(self.placement)
+            status = self._search(joint, 0.5 * work, by_bound=True)
+            if status == cp_model.INFEASIBLE:
+                raise InternalError("the joint model denies its own solution")
+        return self._answer()
+
+    def _walk(self, work: float) -> bool:
+        """Try every place of the wires, if there are not too many."""
+        if self.cost is None or not can_prove(self.instance, self.choice):
+            return False
+        found = prove(
+            self.instance, self.choice, beat=self.cost, work=work, seed=self.seed
+        )
+        if found.placement is not None:
+            self._take(found.placement)
+        self._raise(found.bound)
+        return True
+
+    def _search(self, joint: JointModel, work: float, *, by_bound: bool) -> Any:
+        """Let the solver search the whole model."""
+        run = Run(joint.model, joint.constant, seed=self.seed, workers=self.workers)
+        status = run.solve(work, by_bound=by_bound)
+        if status == cp_model.INFEASIBLE:
+            return status
+        self._raise(run.bound())
+        if status == cp_model.UNKNOWN:
+            return status
+        placement = tighten(self.instance, joint.read(run.solver))
+        cost = evaluate(self.instance, placement).cost
+        if status == cp_model.OPTIMAL:
+            if cost > run.objective():
+                raise InternalError(
+                    f"re-costing gives {cost}, the solver said {run.objective()}"
+                )
+            self._raise(cost)
+        self._take(placement)
         return status
 
-    def bound(self) -> int:
-        """Return the proven lower bound of the placement cost."""
-        # The solver's bound is a double on an integer objective; half a unit of slack
-        # keeps the ceiling from passing the true bound.
-        least = math.ceil(self.solver.best_objective_bound - 0.5)
-        return max(0, least) + self.constant
+    def _take(self, placement: Placement) -> None:
+        """Keep a placement if it is the cheapest so far."""
+        placement = tighten(self.instance, placement)
+        cost = evaluate(self.instance, placement).cost
+        if self.cost is None or cost < self.cost:
+            self.placement, self.cost = placement, cost
 
-    def objective(self) -> int:
-        """Return the cost that the solver states for its solution."""
-        return round(self.solver.objective_value) + self.constant
+    def _raise(self, bound: int) -> None:
+        """Keep a bound if it is the highest so far."""
+        self.bound = bound if self.bound is None else max(self.bound, bound)
+
+    def _is_proven(self) -> bool:
+        return (
+            self.cost is not None and self.bound is not None and self.bound >= self.cost
+        )
+
+    def _answer(self) -> Answer:
+        if self.cost is None or self.bound is None:
+            return Answer("out-of-work", None, None, self.bound)
+        if self.bound > self.cost:
+            raise InternalError(
+                f"the bound {self.bound} passes the cost {self.cost} of a placement"
+            )
+        status: Status = "best" if self._is_proven() else "feasible"
+        return Answer(status, self.placement, self.cost, self.bound)
+
+
+def _is_allowed(instance: Instance, choice: Open, placement: Placement) -> bool:
+    """Whether a placement is inside the open choices and within the limits."""
+    for wire, site, domain in zip(
+        instance.wires, placement.sites, choice.sites, strict=True
+    ):
+        if site not in domain and (wire.uses or not wire.is_known_zero):
+            return False
+    for step in range(instance.steps):
+        if placement.recipes[step] not in choice.recipes[step]:
+            return False
+        if not set(placement.slot_sites[step]) <= set(choice.slot_sites[step]):
+            return False
+    return keeps_limits(instance, placement)
 
 
 def tighten(instance: Instance, placement: Placement) -> Placement:

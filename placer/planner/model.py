@@ -409,6 +409,13 @@ class JointModel:
                 used.append(literal)
         self.model.add(sum(used) <= budget.most_sites)
 
+    def beat(self, cost: int) -> None:
+        """Allow only placements that cost less."""
+        self.model.add(
+            sum(weight * term for weight, term in self.charges.terms)
+            <= cost - 1 - self.constant
+        )
+
     # --- hints and solutions
 
     def hint(self, placement: Placement) -> None:

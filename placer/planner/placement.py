@@ -236,6 +236,24 @@ def evaluate(instance: Instance, placement: Placement) -> Evaluation:
     return Evaluation(cost + lease_cost, tuple(ends), lenders)
 
 
+def keeps_limits(instance: Instance, placement: Placement) -> bool:
+    """Whether a valid placement keeps the budget's limits on sites and on time.
+
+    A wire in |0> without a step never stays anywhere, so its site does not count.
+    """
+    budget = instance.problem.budget
+    ends = evaluate(instance, placement).ends
+    if budget.longest_ns is not None and max(ends, default=0) > budget.longest_ns:
+        return False
+    if budget.most_sites is None:
+        return True
+    used = {p for row in placement.slot_sites for p in row}
+    for site, wire in zip(placement.sites, instance.wires, strict=True):
+        if wire.uses or not wire.is_known_zero:
+            used.add(site)
+    return len(used) <= budget.most_sites
+
+
 Stay = tuple[int, int] | None
 
 

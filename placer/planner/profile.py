@@ -11,6 +11,8 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from collections.abc import Callable
+
     from placer.recipes.circuit import Built, Op
     from placer.tables import Tables
 
@@ -105,7 +107,7 @@ def _is_one(op: Op) -> bool:
     return op.name not in ("barrier", "measure", "reset", "level2", "cx", "cz")
 
 
-def _count(built: Built, wanted) -> tuple[int, ...]:  # type: ignore[no-untyped-def]
+def _count(built: Built, wanted: Callable[[Op], bool]) -> tuple[int, ...]:
     counts = [0] * built.fine.width
     for op in built.fine.ops:
         if wanted(op):
