@@ -1,0 +1,175 @@
+"""Toffoli-level circuits of arithmetic do what their kind says, bit by bit."""
+
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from arithmetic_cases import (
+    Case,
+    all_inputs,
+    bits_of,
+    cases,
+    free_wires,
+    lookup_signatures,
+    merge,
+    product_signatures,
+    signatures,
+    some_operands,
+    table_of,
+)
+from arithmetic_simulators import BITWISE, columns, replay, slices
+
+from placer.recipes.arithmetic import build, recipe_names
+from placer.recipes.circuit import Built
+from placer.recipes.signature import Signature, apply
+
+
+def is_bitwise(built: Built) -> bool:
+    """Whether the coarse circuit only moves basis states."""
+    return all(op.name in BITWISE and op.condition is None for op in built.coarse.ops)
+
+
+def check_all(name: str, signature: Signature) -> bool:
+    """Check every input with every borrowed value; return whether that was possible."""
+    built = build(name, signature)
+    if not is_bitwise(built):
+        return False
+    before, after = all_inputs(built, signature)
+    width = built.coarse.width
+    reached = replay(built.coarse.ops, slices(bits_of(before, width)))
+    found = columns(reached, len(before))
+    assert (found == bits_of(after, width)).all(), (name, signature)
+    return True
+
+
+def check_many(wanted: list[Case]) -> int:
+    """Return how many of these calls were checked on every input."""
+    return sum(check_all(name, signature) for name, signature in wanted)
+
+
+@pytest.mark.parametrize("size", [1, 2, 3, 4])
+def test_every_input(size: int) -> None:
+    assert check_many(cases(signatures(size, 0))) > 50
+
+
+@pytest.mark.parametrize("size", [1, 2, 3])
+def test_every_input_under_a_control(size: int) -> None:
+    assert check_many(cases(signatures(size, 1))) > 50
+
+
+@pytest.mark.parametrize("size", [1, 2])
+def test_every_input_under_more_controls(size: int) -> None:
+    assert check_many(cases(signatures(size, 2))) > 50
+    assert check_many(cases(signatures(size, 3))) > 50
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize(("size", "controls"), [(5, 0), (4, 1), (5, 1), (3, 2)])
+def test_every_input_of_larger_calls(size: int, controls: int) -> None:
+    assert check_many(cases(signatures(size, controls))) > 50
+
+
+@pytest.mark.parametrize("controls", [0, 1, 2])
+def test_every_input_of_look_ups(controls: int) -> None:
+    assert check_many(cases(lookup_signatures(3, 2, controls))) > 20
+
+
+@pytest.mark.parametrize("controls", [0, 1, 2])
+def test_every_input_of_products(controls: int) -> None:
+    assert check_many(cases(product_signatures(2, controls))) > 50
+
+
+@pytest.mark.slow
+def test_every_input_of_larger_products_and_look_ups() -> None:
+    assert check_many(cases(product_signatures(3, 0))) > 100
+    assert check_many(cases(lookup_signatures(4, 1, 0))) > 100
+
+
+# ------------------------------------------------------------------ random inputs
+def check_random(name: str, signature: Signature, count: int) -> bool:
+    """Check random inputs with random borrowed values."""
+    built = build(name, signature)
+    if not is_bitwise(built):
+        return False
+    values = some_operands(signature, count, built.coarse.width)
+    width = built.coarse.width
+    rng = np.random.default_rng(width)
+    before = bits_of([merge(signature, each) for each in values], width)
+    after = bits_of(
+        [merge(signature, apply(signature, each)) for each in values], width
+    )
+    for wire in free_wires(built):
+        if wire >= signature.operands:
+            before[wire] = after[wire] = rng.random(count) < 0.5
+    reached = columns(replay(built.coarse.ops, slices(before)), count)
+    assert (reached == after).all(), (name, signature)
+    return True
+
+
+def large(size: int) -> list[Signature]:
+    """Return one call of every kind and option with registers of this width."""
+    two, third = (size, size), 0x9249249249249249 % (1 << size)
+    constants = (1, third, (1 << size) - 1, 3 << (size // 2))
+    found = []
+    for controls in (0, 1):
+        for carry in (False, True):
+            found += [
+                Signature(kind, two, controls, carry=carry)
+                for kind in ("add", "subtract")
+            ]
+            found += [
+                Signature(kind, (size,), controls, carry=carry)
+                for kind in ("increment", "decrement")
+            ]
+            found += [
+                Signature("add_constant", (size,), controls, constant, (), carry, back)
+                for constant in constants
+                for back in (False, True)
+            ]
+            for back in (False, True):
+                three = (size, size, size)
+                found.append(Signature("sum", three, controls, None, (), carry, back))
+        for kind in ("less_than", "equal"):
+            found.append(Signature(kind, two, controls))
+            found += [
+                Signature(kind, (size,), controls, constant) for constant in constants
+            ]
+    found.append(Signature("add", two, 3))
+    return found
+
+
+@pytest.mark.parametrize("size", [8, 16, 32, 64])
+def test_random_inputs(size: int) -> None:
+    """A thousand inputs here; ten thousand in the long run."""
+    checked = sum(
+        check_random(name, signature, 1000)
+        for signature in large(size)
+        for name in recipe_names(signature)
+    )
+    assert checked > 100
+
+
+@pytest.mark.slow
+@pytest.mark.parametrize("size", [8, 16, 32, 64])
+def test_ten_thousand_random_inputs(size: int) -> None:
+    for signature in large(size):
+        for name in recipe_names(signature):
+            check_random(name, signature, 10_000)
+
+
+@pytest.mark.parametrize(("address", "entries", "output"), [(6, 64, 8), (7, 83, 5)])
+def test_random_inputs_of_look_ups(address: int, entries: int, output: int) -> None:
+    table = table_of(entries, output)
+    for controls in (0, 1):
+        signature = Signature("lookup", (address, output), controls, table=table)
+        names = recipe_names(signature)
+        assert len(names) > 12
+        assert sum(check_random(name, signature, 2000) for name in names) >= 5
+
+
+def test_random_inputs_of_products() -> None:
+    for widths in ((8, 8, 16), (5, 9, 12), (12, 4, 7)):
+        for inverse in (False, True):
+            signature = Signature("multiply_add", widths, inverse=inverse)
+            names = recipe_names(signature)
+            assert sum(check_random(name, signature, 2000) for name in names) == 2
