@@ -89,15 +89,16 @@ def build(name: str, signature: Signature) -> Built:
     else:
         made = _make(_way(name), signature)
     operands = signature.operands
-    made = _without_idle_slots(made, operands)
+    draft = Draft(tidy(made.draft.coarse), tidy(made.draft.fine))
+    made = _without_idle_slots(replace(made, draft=draft), operands)
     return Built(
         recipe=name,
         kind=signature.kind,
         controls=signature.controls,
         workspace=recipe.workspace,
         needs_measurement=recipe.needs_measurement,
-        coarse=Circuit(operands, made.slots, tidy(made.draft.coarse), made.bits),
-        fine=Circuit(operands, made.slots, tidy(made.draft.fine), made.bits),
+        coarse=Circuit(operands, made.slots, made.draft.coarse, made.bits),
+        fine=Circuit(operands, made.slots, made.draft.fine, made.bits),
         level2_wires=made.level2_wires,
     )
 
@@ -133,13 +134,21 @@ def _swap_ways(entries: int) -> tuple[Way, ...]:
 def rewire(draft: Draft, wires: Sequence[int]) -> Draft:
     """Return a draft whose wire i is `wires[i]`."""
 
+    def onto(old: tuple[int, ...]) -> tuple[int, ...]:
+        return tuple([wires[wire] for wire in old])
+
     def moved(ops: tuple[Op, ...]) -> tuple[Op, ...]:
         return tuple(
-            replace(
-                op,
-                wires=tuple(wires[wire] for wire in op.wires),
-                enters=tuple(wires[wire] for wire in op.enters),
-                leaves=tuple(wires[wire] for wire in op.leaves),
+            Op(
+                op.name,
+                onto(op.wires),
+                op.params,
+                op.bit,
+                op.condition,
+                op.level,
+                op.action,
+                onto(op.enters),
+                onto(op.leaves),
             )
             for op in ops
         )
@@ -166,6 +175,8 @@ def _make(way: Way, signature: Signature) -> Made:
     if way.controls is None or signature.controls <= way.controls:
         return way.make(signature)
     inner = way.make(replace(signature, controls=1))
+    if inner.draft == Draft():
+        return inner
     count = signature.controls - 1
     first, place = signature.operands, layout(signature)
     cleaner = Cleaner(way.recipe.needs_measurement)

@@ -81,25 +81,26 @@ def add_ripple_none(signature: Signature) -> Made:
     return Made(_directed(signature, draft))
 
 
-def add_lookahead(signature: Signature) -> Made:
+def add_lookahead(signature: Signature, *, measured: bool) -> Made:
     """Return the look-ahead adder; a control first masks A into clean wires."""
     place = layout(signature)
     a, b = place.registers
     size, control = len(a), _control(place)
     need = lookahead.in_place_clean(size, carry=signature.carry)
     mask = 0 if control is None else size
-    fresh = _fresh(place, need + mask)
+    fresh, cleaner = _fresh(place, need + mask), Cleaner(measured)
     if control is None:
-        draft = lookahead.in_place(a, b, place.result, fresh)
+        draft = lookahead.in_place(a, b, place.result, fresh, cleaner)
     else:
         masked = fresh[need:]
-        copy = join(
-            temporary_and(control, wire, copied)
-            for wire, copied in zip(a, masked, strict=True)
-        )
-        inner = lookahead.in_place(masked, b, place.result, fresh[:need])
-        draft = join((copy, inner, copy.inverse()))
-    return Made(_directed(signature, draft), same("clean", need + mask))
+        pairs = list(zip(a, masked, strict=True))
+        copy = [temporary_and(control, wire, copied) for wire, copied in pairs]
+        inner = lookahead.in_place(masked, b, place.result, fresh[:need], cleaner)
+        drop = [cleaner.undo(control, wire, copied) for wire, copied in pairs]
+        draft = join((*copy, inner, *drop))
+    if signature.is_backward:
+        draft = turned(draft, b) if measured else draft.inverse()
+    return Made(draft, same("clean", need + mask), cleaner.bits)
 
 
 def add_ands(signature: Signature, *, measured: bool) -> Made:
@@ -131,7 +132,8 @@ def sum_lookahead(signature: Signature) -> Made:
     place = layout(signature)
     a, b, _ = place.registers
     need = lookahead.out_of_place_clean(len(place.target) - 1)
-    draft = lookahead.out_of_place(a, b, place.target, _fresh(place, need))
+    cleaner, fresh = Cleaner(measured=False), _fresh(place, need)
+    draft = lookahead.out_of_place(a, b, place.target, fresh, cleaner)
     return Made(_directed(signature, draft), same("clean", need))
 
 
@@ -273,6 +275,17 @@ def compare_ands(signature: Signature, *, measured: bool) -> Made:
     cleaner = Cleaner(measured)
     draft = ands.carry_out(a, b, _result(place), _fresh(place, need), cleaner, control)
     return Made(turned(draft, a), same("clean", need), cleaner.bits)
+
+
+def compare_lookahead(signature: Signature) -> Made:
+    """Return [A < B] in logarithmic depth on clean wires."""
+    place = layout(signature)
+    a, b = place.registers
+    need = lookahead.top_carry_clean(len(a))
+    draft = lookahead.top_carry(
+        a, b, _result(place), _fresh(place, need), _control(place)
+    )
+    return Made(turned(draft, a), same("clean", need))
 
 
 def _not_below(signature: Signature, place: Layout) -> constants.Chain | None:

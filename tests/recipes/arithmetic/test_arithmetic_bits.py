@@ -9,7 +9,6 @@ from arithmetic_cases import (
     all_inputs,
     bits_of,
     cases,
-    free_wires,
     lookup_signatures,
     merge,
     product_signatures,
@@ -86,28 +85,47 @@ def test_every_input_of_larger_products_and_look_ups() -> None:
 
 
 # ------------------------------------------------------------------ random inputs
-def check_random(name: str, signature: Signature, count: int) -> bool:
-    """Check random inputs with random borrowed values."""
+Rows = tuple[np.ndarray, np.ndarray]
+"""Operand wires before and after, wires x inputs."""
+
+
+def random_rows(signature: Signature, count: int) -> Rows:
+    """Return random inputs that keep the promises, and what must come out."""
+    values = some_operands(signature, count, signature.operands)
+    before = [merge(signature, each) for each in values]
+    after = [merge(signature, apply(signature, each)) for each in values]
+    width = signature.operands
+    return bits_of(before, width), bits_of(after, width)
+
+
+def check_random(name: str, signature: Signature, rows: Rows) -> bool:
+    """Check inputs with random borrowed values."""
     built = build(name, signature)
     if not is_bitwise(built):
         return False
-    values = some_operands(signature, count, built.coarse.width)
-    width = built.coarse.width
-    rng = np.random.default_rng(width)
-    before = bits_of([merge(signature, each) for each in values], width)
-    after = bits_of(
-        [merge(signature, apply(signature, each)) for each in values], width
-    )
-    for wire in free_wires(built):
-        if wire >= signature.operands:
-            before[wire] = after[wire] = rng.random(count) < 0.5
+    count = rows[0].shape[1]
+    rng = np.random.default_rng(built.coarse.width)
+    slots = np.zeros((len(built.slots), count), dtype=bool)
+    for at, slot in enumerate(built.slots):
+        if slot == "borrowed":
+            slots[at] = rng.random(count) < 0.5
+    before, after = (np.vstack([part, slots]) for part in rows)
     reached = columns(replay(built.coarse.ops, slices(before)), count)
     assert (reached == after).all(), (name, signature)
     return True
 
 
+def check_recipes(signature: Signature, count: int) -> int:
+    """Return how many recipes of a call were checked on so many random inputs."""
+    rows = random_rows(signature, count)
+    return sum(check_random(name, signature, rows) for name in recipe_names(signature))
+
+
 def large(size: int) -> list[Signature]:
-    """Return one call of every kind and option with registers of this width."""
+    """Return one call of every kind and option with registers of this width.
+
+    Comparisons for equality only up to 16: multi-controlled X has tests of its own.
+    """
     two, third = (size, size), 0x9249249249249249 % (1 << size)
     constants = (1, third, (1 << size) - 1, 3 << (size // 2))
     found = []
@@ -129,7 +147,7 @@ def large(size: int) -> list[Signature]:
             for back in (False, True):
                 three = (size, size, size)
                 found.append(Signature("sum", three, controls, None, (), carry, back))
-        for kind in ("less_than", "equal"):
+        for kind in ("less_than", "equal") if size <= 16 else ("less_than",):
             found.append(Signature(kind, two, controls))
             found += [
                 Signature(kind, (size,), controls, constant) for constant in constants
@@ -141,20 +159,13 @@ def large(size: int) -> list[Signature]:
 @pytest.mark.parametrize("size", [8, 16, 32, 64])
 def test_random_inputs(size: int) -> None:
     """A thousand inputs here; ten thousand in the long run."""
-    checked = sum(
-        check_random(name, signature, 1000)
-        for signature in large(size)
-        for name in recipe_names(signature)
-    )
-    assert checked > 100
+    assert sum(check_recipes(signature, 1000) for signature in large(size)) > 100
 
 
 @pytest.mark.slow
 @pytest.mark.parametrize("size", [8, 16, 32, 64])
 def test_ten_thousand_random_inputs(size: int) -> None:
-    for signature in large(size):
-        for name in recipe_names(signature):
-            check_random(name, signature, 10_000)
+    assert sum(check_recipes(signature, 10_000) for signature in large(size)) > 100
 
 
 @pytest.mark.parametrize(("address", "entries", "output"), [(6, 64, 8), (7, 83, 5)])
@@ -162,14 +173,12 @@ def test_random_inputs_of_look_ups(address: int, entries: int, output: int) -> N
     table = table_of(entries, output)
     for controls in (0, 1):
         signature = Signature("lookup", (address, output), controls, table=table)
-        names = recipe_names(signature)
-        assert len(names) > 12
-        assert sum(check_random(name, signature, 2000) for name in names) >= 5
+        assert len(recipe_names(signature)) > 12
+        assert check_recipes(signature, 2000) >= 5
 
 
 def test_random_inputs_of_products() -> None:
     for widths in ((8, 8, 16), (5, 9, 12), (12, 4, 7)):
         for inverse in (False, True):
             signature = Signature("multiply_add", widths, inverse=inverse)
-            names = recipe_names(signature)
-            assert sum(check_random(name, signature, 2000) for name in names) == 2
+            assert check_recipes(signature, 2000) == 2
