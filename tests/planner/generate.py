@@ -1,8 +1,9 @@
 """Tiny legal problems, drawn from a seed: what the exhaustive search can exhaust.
 
 Devices are lines, rings, stars and a small grid of three to five sites, uniform or
-not, some with level 2 or measured cleanup.  Programs have a few calls and plain gates
-on wires that start unknown, in |0>, or are workspace.
+not, some with level 2, measured cleanup, a price for T gates or a site out of order.
+Programs have a few calls, plain gates, barriers, resets and measurements on wires that
+start unknown, in |0>, or are workspace.
 """
 
 from __future__ import annotations
@@ -19,6 +20,7 @@ from placer.device.model import (
     Link,
     Site,
     SiteId,
+    TGate,
 )
 from placer.errors import NoPlan, Place
 from placer.problem import Problem, make_problem
@@ -41,6 +43,8 @@ def tiny_device(draw: random.Random) -> Device:
     is_uneven = draw.random() < 0.5
     has_level2 = draw.random() < 0.4
     measures = draw.random() < 0.4
+    broken = draw.randrange(count) if count == 5 and draw.random() < 0.15 else -1
+    t_gate = TGate(3e-3, 200) if draw.random() < 0.2 else None
 
     def about(value: float) -> float:
         return value * (draw.uniform(0.6, 1.6) if is_uneven else 1.0)
@@ -61,7 +65,7 @@ def tiny_device(draw: random.Random) -> Device:
                 300,
                 draw.choice((0.0, 0.004)),
                 Level2(about(40.0), 2e-3, 40) if has_level2 else None,
-                True,
+                number != broken,
                 (float(number), 0.0),
             )
         )
@@ -84,11 +88,11 @@ def tiny_device(draw: random.Random) -> Device:
         sites=tuple(sites),
         links=links,
         capabilities=Capabilities(measures, 200 if measures else None, True),
-        t_gate=None,
+        t_gate=t_gate,
         budget=Budget(),
         text="",
         path="tiny",
-        hash=repr((sites, links)),
+        hash=repr((sites, links, t_gate)),
         link_at={(k.a, k.b): k for k in links},
     )
 
@@ -131,11 +135,16 @@ def tiny_program(draw: random.Random, sites: int) -> Program:
     for _ in range(draw.randint(1, 2 if has_scratch or is_full else 3)):
         what = draw.random()
         if what < 0.7:
-            add(draw.choice(("mcx", "mcz")), "call", draw.sample(range(wires), 3))
+            size = 4 if wires >= 4 and draw.random() < 0.3 else 3
+            add(draw.choice(("mcx", "mcz")), "call", draw.sample(range(wires), size))
         elif what < 0.85:
             add("gate", "cx", draw.sample(range(wires), 2))
+        elif what < 0.9:
+            add("barrier", "barrier", draw.sample(range(wires), 2))
+        elif what < 0.94:
+            add("reset", "reset", [draw.randrange(wires)])
         else:
-            add("gate", "h", [draw.randrange(wires)])
+            add("gate", draw.choice(("h", "t")), [draw.randrange(wires)])
     for scratch in range(wires, len(names)):
         pair = draw.sample(range(wires), 2)
         add("and", "and", [*pair, scratch])
@@ -186,22 +195,24 @@ def tiny_problem(seed: int) -> Problem | None:
     """Return the problem of a seed, `None` where a call has no recipe at all."""
     draw = random.Random(seed)
     device = tiny_device(draw)
-    program = widened(draw, tiny_program(draw, len(device.sites)), len(device.sites))
+    working = sum(site.in_service for site in device.sites)
+    program = widened(draw, tiny_program(draw, working), working)
     budget = Budget()
     if draw.random() < 0.2:
-        budget = Budget(most_sites=draw.randint(3, len(device.sites)))
+        budget = Budget(most_sites=draw.randint(3, working))
     elif draw.random() < 0.15:
         budget = Budget(longest_ns=draw.randint(1_500, 6_000))
     try:
         problem = make_problem(device, program, budget=budget, goal="estimate")
     except NoPlan:
         return None
+    taste = draw.choice(("any", "any", "any", "clean", "borrowed"))
     choices = []
     for row in problem.choices:
         small = [b for b in row if len(b.slots) <= 2]
-        kept = draw.sample(small, min(len(small), 2)) if small else list(row[:1])
-        borrowing = [b for b in small if "borrowed" in b.slots and b not in kept]
-        if borrowing and draw.random() < 0.5:
-            kept[-1] = draw.choice(borrowing)
-        choices.append(tuple(kept))
+        wanted = [b for b in small if taste in b.slots]
+        if wanted:
+            choices.append(tuple(draw.sample(wanted, min(len(wanted), 2))))
+            continue
+        choices.append(tuple(draw.sample(small, min(len(small), 2)) or row[:1]))
     return dataclasses.replace(problem, choices=tuple(choices))

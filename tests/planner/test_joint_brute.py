@@ -1,4 +1,7 @@
-"""The joint model against an exhaustive search that shares no code with it."""
+"""The joint model and the walk over sites against an exhaustive search.
+
+The search in `brute` shares no code with either.
+"""
 
 from __future__ import annotations
 
@@ -11,14 +14,21 @@ import pytest
 
 from placer.planner.joint import everything, solve
 from placer.planner.loop import run
-from placer.planner.placement import evaluate, make_instance
+from placer.planner.placement import (
+    Placement,
+    evaluate,
+    keeps_limits,
+    make_instance,
+    schedule,
+)
+from placer.planner.proof import can_prove, prove
 from placer.problem import Problem
 from placer.tables import device_tables
 from tests.planner.brute import least_cost
 from tests.planner.generate import tiny_problem
 
 SEEN: Counter[str] = Counter()
-GATE = range(220)
+GATE = range(300)
 BLOCK = 20
 
 
@@ -38,11 +48,29 @@ def compare(seed: int) -> None:
     SEEN["cases"] += 1
     if least is None:
         assert answer.status == "none", seed
+        assert walked(instance, 10**15) == (None, 10**15), seed
         SEEN["infeasible"] += 1
         return
     assert answer.status == "best", (seed, answer.status)
     assert answer.cost == least, (seed, answer.cost, least)
+    # The walk finds nothing below the least cost, and that cost below anything else.
+    assert walked(instance, least) == (None, least), seed
+    assert walked(instance, least + 1) == (least, least), seed
+    assert walked(instance, 3 * least + 2) == (least, least), seed
     record(instance, answer.placement)
+
+
+def walked(instance: Any, beat: int) -> tuple[int | None, int]:
+    """Return the cost that the walk over all sites found, and what it proved."""
+    choice = everything(instance)
+    assert can_prove(instance, choice)
+    found = prove(instance, choice, beat=beat, work=30.0, seed=0)
+    if found.placement is None:
+        assert found.cost == beat
+        return None, found.bound
+    assert evaluate(instance, found.placement).cost == found.cost
+    assert keeps_limits(instance, found.placement)
+    return found.cost, found.bound
 
 
 def record(instance: Any, placement: Any) -> None:
@@ -56,9 +84,29 @@ def record(instance: Any, placement: Any) -> None:
     SEEN["measured"] += any(b.needs_measurement for b in chosen)
     SEEN["clean"] += any("clean" in b.slots for b in chosen)
     spans = sorted(zip(placement.starts, found.ends, strict=True))
-    SEEN["parallel"] += any(b[0] < a[1] for a, b in itertools.pairwise(spans))
+    is_parallel = any(b[0] < a[1] for a, b in itertools.pairwise(spans))
+    SEEN["parallel"] += is_parallel
+    SEEN["serial"] += len(spans) > 1 and not is_parallel
+    order = sorted(range(instance.steps), key=lambda i: (placement.starts[i], i))
+    choices = (placement.sites, placement.recipes, placement.slot_sites)
+    SEEN["late start"] += schedule(instance, order, *choices) != placement.starts
     SEEN["shared site"] += len(set(placement.sites)) < wires
-    SEEN["limited"] += instance.problem.budget.most_sites is not None
+    SEEN["shared slot"] += shares_slots(placement)
+    SEEN["limited sites"] += instance.problem.budget.most_sites is not None
+    SEEN["limited time"] += instance.problem.budget.longest_ns is not None
+    device = instance.problem.device
+    SEEN["uneven"] += len({link.error for link in device.links}) > 1
+    SEEN["broken site"] += len(instance.usable) < len(device.sites)
+    SEEN["priced T"] += device.t_gate is not None
+    kinds = {op.kind for op in instance.problem.program.operations}
+    for kind in ("barrier", "reset", "measure"):
+        SEEN[kind] += kind in kinds
+
+
+def shares_slots(placement: Placement) -> bool:
+    """Whether two steps use one site as workspace, one after the other."""
+    taken = [p for row in placement.slot_sites for p in row]
+    return len(set(taken)) < len(taken)
 
 
 @pytest.mark.parametrize("block", range(len(GATE) // BLOCK))
@@ -79,14 +127,24 @@ def test_every_kind_of_problem_was_drawn() -> None:
         "measured",
         "clean",
         "parallel",
+        "serial",
+        "late start",
         "shared site",
-        "limited",
+        "shared slot",
+        "limited sites",
+        "limited time",
+        "uneven",
+        "broken site",
+        "priced T",
+        "barrier",
+        "reset",
+        "measure",
     ):
         assert SEEN[kind] >= 3, (kind, SEEN)
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("block", range(15))
+@pytest.mark.parametrize("block", range(25))
 def test_joint_equals_brute_force_on_more(block: int) -> None:
     for seed in range(1000 + block * BLOCK, 1000 + (block + 1) * BLOCK):
         compare(seed)
