@@ -20,7 +20,8 @@ from placer.recipes.draft import Draft, Made, both, join, same, tidy
 from placer.recipes.makers import turned
 from placer.recipes.signature import Signature, layout, problems
 from placer.recipes.toffoli import temporary_and
-from placer.recipes.ways import WAYS, Way, swap_way
+from placer.recipes.way import Way
+from placer.recipes.ways import WAYS, swap_way, taken_way
 
 _BY_NAME = {way.recipe.name: way for way in WAYS}
 _EQUAL = "equal-"
@@ -46,7 +47,7 @@ def recipe_names(signature: Signature) -> tuple[str, ...]:
         return tuple(_EQUAL + name for name in _equal_names(signature))
     ways = list(WAYS)
     if signature.kind == "lookup":
-        ways += _swap_ways(len(signature.table))
+        ways += _block_ways(len(signature.table))
     return tuple(way.recipe.name for way in ways if way.exists(signature))
 
 
@@ -112,22 +113,23 @@ def _refuse(signature: Signature) -> None:
 def _way(name: str) -> Way:
     if name in _BY_NAME:
         return _BY_NAME[name]
-    for way in _swap_ways(1 << 64):
+    for way in _block_ways(1 << 64):
         if way.recipe.name == name:
             return way
     raise ValueError(f"there is no recipe {name!r}")
 
 
 @lru_cache(maxsize=64)
-def _swap_ways(entries: int) -> tuple[Way, ...]:
-    """Return the select-swap look-ups for a table, by block size, a power of two."""
+def _block_ways(entries: int) -> tuple[Way, ...]:
+    """Return the look-ups in blocks for a table, by block size, a power of two."""
     sizes = [1 << level for level in range(1, (entries // 2).bit_length())]
-    return tuple(
+    swaps = tuple(
         swap_way(size, lent=lent, measured=measured)
         for lent in (False, True)
         for size in sizes
         for measured in (False, True)
     )
+    return swaps + tuple(taken_way(size) for size in (1, *sizes))
 
 
 # ------------------------------------------------------------------ wires

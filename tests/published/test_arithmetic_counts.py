@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections import Counter
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 
 import pytest
 
@@ -235,6 +236,28 @@ def test_look_ahead_formulas() -> None:
         sizes("add-lookahead", add(n, carry=True)).toffoli_depth for n in (3, 4, 6)
     ]
     assert found == [5, 9, 12]
+
+
+def test_measured_look_ahead() -> None:
+    """This code: n-1 carries and both sets of propagate bits go without a Toffoli."""
+    for size in (4, 8, 16, 32):
+        call = add(size, carry=True)
+        plain, found = (sizes(f"add-lookahead{way}", call) for way in ("", "-measured"))
+        blocks = [n - ones(n) - lg(n) for n in (size, size - 1)]
+        assert plain.toffoli - found.toffoli == size - 1 + sum(blocks)
+        assert found.measurements == size - 1 + sum(blocks)
+        assert found.clean == plain.clean
+        assert found.toffoli_depth < plain.toffoli_depth
+
+
+def test_look_ahead_comparison() -> None:
+    """This code: Toffoli depth 2 lg n + 4 for powers of two, under 6n Toffolis."""
+    for size in (4, 8, 16, 32, 64):
+        call = Signature("less_than", (size, size))
+        found = sizes("compare-lookahead", call)
+        assert found.toffoli_depth == 2 * lg(size) + 4
+        assert found.toffoli == 6 * size - 2 * lg(size) - 4
+        assert found.clean == 2 * size - lg(size) - 1
 
 
 def test_temporary_ands() -> None:
@@ -542,6 +565,36 @@ def test_small_select_swap() -> None:
             assert found.toffoli == 2 * (entries // block - 2 + 3 * (block - 1))
             lent = sizes(f"lookup-swap-borrowed-{block}-measured", lookup(entries, 3))
             assert lent.toffoli == 2 * (entries // block - 2) + 12 * (block - 1)
+
+
+TAKEN_AWAY = [
+    # L, b, k, ANDs by the formula ceil(L/k) + k, whatever b is: Berry et al. 2019,
+    # arXiv 1902.02134 (from memory)
+    (64, 8, 1, 65),
+    (64, 8, 2, 34),
+    (64, 8, 4, 20),
+    (64, 8, 8, 16),
+    (256, 8, 4, 68),
+    (256, 8, 8, 40),
+    (256, 8, 16, 32),
+    (1024, 16, 4, 260),
+    (1024, 16, 8, 136),
+    (1024, 16, 16, 80),
+]
+
+
+@pytest.mark.parametrize(("entries", "output", "block", "formula"), TAKEN_AWAY)
+def test_look_up_taken_away(
+    entries: int, output: int, block: int, formula: int
+) -> None:
+    """This code: two ANDs less for the iteration, two for the first of the k wires."""
+    assert formula == entries // block + block
+    call = replace(lookup(entries, output), inverse=True)
+    found = sizes(f"lookup-taken-{block}-measured", call)
+    assert found.toffoli == formula - (4 if block > 1 else 3)
+    need = math.ceil(math.log2(entries / block)) - 1
+    assert found.clean == need + (block if block > 1 else 0)
+    assert found.measurements == output + found.toffoli
 
 
 # ------------------------------------------------------------------ products

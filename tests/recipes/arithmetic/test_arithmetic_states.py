@@ -21,6 +21,7 @@ from arithmetic_cases import (
     signatures,
     some_operands,
     superposed,
+    table_of,
 )
 from arithmetic_simulators import follow, mismatch
 
@@ -144,6 +145,19 @@ def test_few_superposed_inputs(controls: int) -> None:
         for name in recipe_names(signature):
             if not name.startswith("equal-none"):
                 check_some(name, signature, 6)
+
+
+@pytest.mark.parametrize("controls", [0, 1])
+def test_few_superposed_inputs_of_look_ups(controls: int) -> None:
+    """Sixteen and eleven entries, every block size, both directions."""
+    for entries, inverse in itertools.product((16, 11), (False, True)):
+        signature = Signature(
+            "lookup", (4, 2), controls, table=table_of(entries, 2), inverse=inverse
+        )
+        names = recipe_names(signature)
+        assert any("-4" in name for name in names)
+        for name in names:
+            check_some(name, signature, 24)
 
 
 @pytest.mark.slow

@@ -226,4 +226,7 @@ def test_block_sizes_of_look_ups() -> None:
             assert f"lookup-swap-{kind}-{block}" in names
             assert f"lookup-swap-{kind}-{block}-measured" in names
     assert not any("-16" in name for name in names)
+    taken = recipe_names(Signature("lookup", (4, 4), table=table, inverse=True))
+    extra = [f"lookup-taken-{block}-measured" for block in (1, 2, 4, 8)]
+    assert taken == (*names, *extra)
     assert describe("lookup-swap-borrowed-32").workspace == "borrowed"
