@@ -13,6 +13,7 @@ from placer.recipes.way import (
     DRAPER,
     GIDNEY,
     HANER,
+    KHATTAR,
     LADDER,
     LARGEST_FOURIER,
     TAKAHASHI,
@@ -225,6 +226,15 @@ ADDITIONS: tuple[Way, ...] = (
         GIDNEY,
         controls=None,
         measured=True,
+    ),
+    way(
+        "increment-clean-log",
+        "conditionally clean prefixes on about lg n clean wires",
+        "clean",
+        _STEP,
+        makers.increment_log,
+        KHATTAR,
+        sizes=(2, None),
     ),
     way(
         "increment-borrowed",

@@ -15,6 +15,7 @@ from placer.recipes import (
     lookahead,
     lookups,
     multiply,
+    prefixes,
     ripple,
     unlookups,
 )
@@ -116,6 +117,22 @@ def compare_constant_clean(signature: Signature, *, measured: bool) -> Made:
         chain, result_of(place), fresh_wires(place, need), cleaner
     )
     return Made(draft + flip, same("clean", need), cleaner.bits)
+
+
+def compare_constant_log(signature: Signature) -> Made:
+    """Return [A < constant] on about lg n clean wires."""
+    place = layout(signature)
+    wires, constant = place.registers[0], signature.constant or 0
+    if not constant:
+        return Made(Draft())
+    if constant >> len(wires):
+        return Made(_always(signature, place))
+    length = prefixes.compared_length(len(wires), constant)
+    need = prefixes.prefix_clean(length + signature.controls)
+    draft = prefixes.below_constant(
+        wires, constant, result_of(place), fresh_wires(place, need), place.controls
+    )
+    return Made(draft, same("clean", need))
 
 
 # ------------------------------------------------------------------ look-ups

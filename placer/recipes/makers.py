@@ -15,6 +15,7 @@ from placer.recipes import (
     fourier,
     increments,
     lookahead,
+    prefixes,
     ripple,
 )
 from placer.recipes.ands import Cleaner
@@ -231,6 +232,16 @@ def increment_borrowed(signature: Signature, form: str) -> Made:
         draft = increments.one_borrowed(wires, fresh[0])
     draft = join((draft, *(both("x", wire) for wire in place.controls)))
     return Made(directed(signature, draft), same("borrowed", count))
+
+
+def increment_log(signature: Signature) -> Made:
+    """Return 1 added on about lg n clean wires; a control is the lowest bit."""
+    place = layout(signature)
+    wires = (*place.controls, *place.target)
+    need = prefixes.prefix_clean(len(wires) - 1)
+    draft = prefixes.increment(wires, fresh_wires(place, need))
+    draft = join((draft, *(both("x", wire) for wire in place.controls)))
+    return Made(directed(signature, draft), same("clean", need))
 
 
 def increment_none(signature: Signature) -> Made:

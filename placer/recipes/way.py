@@ -20,6 +20,7 @@ DKRS = "Draper, Kutin, Rains and Svore 2004, quant-ph/0406142"
 GIDNEY = "Gidney 2018, arXiv 1709.06648"
 CONTROLLED = "controlled after Munoz-Coreas and Thapliyal 2017, arXiv 1706.05113"
 HANER = "Haener, Roetteler and Svore 2016, arXiv 1611.07995"
+KHATTAR = "after Khattar and Gidney 2024, arXiv 2407.17966; blocks derived here"
 LADDER = "common practice for 1, derived here for other constants"
 LARGEST_FOURIER = 64
 """Beyond this the smallest phases are below the precision of any device."""

@@ -433,6 +433,32 @@ def test_one_borrowed_wire_less() -> None:
         assert (found.toffoli, found.borrowed) == (4 * size - 6, size - 1)
 
 
+def test_increment_on_few_clean_wires() -> None:
+    """Khattar and Gidney 2024, arXiv 2407.17966: 3n Toffolis on lg* n clean (abstract).
+
+    This code: fewer than 3n Toffolis on about lg n clean wires.
+    """
+    for size, clean in ((4, 1), (6, 1), (7, 2), (12, 2), (13, 3), (64, 5), (100, 6)):
+        found = sizes("increment-clean-log", Signature("increment", (size,)))
+        assert found.clean == clean <= math.log2(size)
+        assert 2 * size - 5 <= found.toffoli < 3 * size
+        one = sizes("increment-borrowed-one", Signature("increment", (size,)))
+        assert found.toffoli <= one.toffoli
+
+
+def test_comparison_with_a_constant_on_few_clean_wires() -> None:
+    """The same paper: 3n Toffolis; this code: 2n-3 and one for each end of a run."""
+    for size in (8, 16, 32, 64):
+        every = (1 << size) - 1
+        for constant, runs in ((every, 1), (every // 3, size // 2), (every - 64, 2)):
+            call = Signature("less_than", (size,), constant=constant)
+            found = sizes("compare-constant-log", call)
+            assert found.toffoli <= min(3 * size, 2 * size - 3 + 2 * runs)
+            assert found.clean <= math.log2(size)
+            lent = sizes("compare-constant-borrowed", call)
+            assert found.toffoli < lent.toffoli
+
+
 # ------------------------------------------------------------------ constants
 def borrowed_constant(size: int, constant: int) -> int:
     """Return the Toffolis of a constant added with one borrowed wire."""

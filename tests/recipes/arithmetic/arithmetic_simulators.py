@@ -36,19 +36,62 @@ def columns(words: np.ndarray, inputs: int) -> np.ndarray:
 def replay(ops: Iterable[Op], words: np.ndarray) -> np.ndarray:
     """Return bit slices after X-type gates, 64 inputs a machine word."""
     words = words.copy()
-    ones = np.uint64(0xFFFFFFFFFFFFFFFF)
     for op in ops:
-        if op.name not in BITWISE or op.condition is not None:
+        if op.condition is not None:
             raise ValueError(op.name)
-        target = words[op.wires[-1]]
-        if len(op.wires) == 1:
-            target ^= ones
-            continue
-        product = words[op.wires[0]]
-        for wire in op.wires[1:-1]:
-            product = product & words[wire]
-        target ^= product
+        _flip(op, words)
     return words
+
+
+def _flip(op: Op, words: np.ndarray) -> None:
+    """Do one X-type gate in place."""
+    if op.name not in BITWISE:
+        raise ValueError(op.name)
+    target = words[op.wires[-1]]
+    if len(op.wires) == 1:
+        target ^= np.uint64(0xFFFFFFFFFFFFFFFF)
+        return
+    product = words[op.wires[0]]
+    for wire in op.wires[1:-1]:
+        product = product & words[wire]
+    target ^= product
+
+
+SIGNED = BITWISE | {"h", "measure", "z", "cz"}
+
+
+def replay_signed(
+    ops: Iterable[Op], words: np.ndarray, outcomes: np.random.Generator
+) -> tuple[np.ndarray, np.ndarray]:
+    """Return bit slices and signs after X-type gates and X-basis measurements.
+
+    One outcome is drawn for each measurement, the same for all inputs.  A wire that
+    holds b gives outcome m the sign (-1)^(bm) and comes to hold m.  An `h` must be
+    followed by the measurement of its wire.
+    """
+    words = words.copy()
+    sign = np.zeros(words.shape[1], dtype=np.uint64)
+    opened: int | None = None
+    bits: dict[int, bool] = {}
+    for op in ops:
+        if opened is not None and op.name != "measure":
+            raise ValueError(f"{op.name} before the measurement of wire {opened}")
+        if op.name == "h":
+            (opened,) = op.wires
+        elif op.name == "measure":
+            if opened != op.wires[0] or op.bit is None or op.bit in bits:
+                raise ValueError("a measurement that is not in the X basis")
+            bits[op.bit] = bool(outcomes.integers(0, 2))
+            if bits[op.bit]:
+                sign ^= words[opened]
+            words[opened] = np.uint64(0xFFFFFFFFFFFFFFFF * bits[op.bit])
+            opened = None
+        elif op.condition is None or bits[op.condition]:
+            if op.name in ("z", "cz"):
+                sign ^= np.bitwise_and.reduce(words[list(op.wires)], axis=0)
+            else:
+                _flip(op, words)
+    return words, sign
 
 
 # ---------------------------------------------------------------- sparse states
