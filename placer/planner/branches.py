@@ -8,18 +8,20 @@ from __future__ import annotations
 
 import random
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from placer.planner.sitetree import Bools, Walk
-from placer.planner.steptables import least_over_slots, reach_of
+from placer.planner.stepdirect import parts_of
+from placer.planner.steptables import are_direct, least_over_slots, reach_of
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from placer.planner.model import Open
     from placer.planner.placement import Instance
+    from placer.planner.profile import Profile
     from placer.planner.steptables import Ints, Reach
 
 SETS = 4
@@ -66,14 +68,22 @@ def branches_of(instance: Instance, choice: Open, roots: Sequence[int]) -> Branc
         choices=np.array([len(row) for row in choice.recipes], dtype=np.int64),
         chain=chain,
         pays=pays,
-        before=before,
+        before=_predecessors(instance),
         first=np.array(first, dtype=np.int64),
         last=np.array(last, dtype=np.int64),
         others=others,
-        constant=0,
         **tables,
     )
     return Branches(walk, order, reach)
+
+
+def _predecessors(instance: Instance) -> Ints:
+    """Return per step the steps just before it on its wires, -1 for none."""
+    rows = [[-1] * max(map(len, instance.operands)) for _ in instance.operands]
+    for w, wire in enumerate(instance.wires):
+        for one, two in zip(wire.uses, wire.uses[1:], strict=False):
+            rows[two][instance.operands[two].index(w)] = one
+    return np.array(rows, dtype=np.int64)
 
 
 def direct_order(instance: Instance) -> Bools:
@@ -118,7 +128,7 @@ def _apart(instance: Instance, order: Sequence[int]) -> Bools:
 
 def _arrays(
     instance: Instance, choice: Open, order: Sequence[int]
-) -> tuple[dict[str, Ints], dict[int, Reach]]:
+) -> tuple[dict[str, Any], dict[int, Reach]]:
     """Return the recipe arrays, one after the other, and where the states find them."""
     count = len(instance.usable)
     depth_of = {w: b for b, w in enumerate(order)}
@@ -130,7 +140,10 @@ def _arrays(
     who: list[list[int]] = []
     stride: list[list[int]] = []
     at: list[list[int]] = []
+    direct = np.array(are_direct(instance, choice.recipes), dtype=np.bool_)
+    wires = np.full((instance.steps, deepest), -1, dtype=np.int64)
     for i, operands in enumerate(instance.operands):
+        wires[i, : len(operands)] = [depth_of[w] for w in operands]
         for depth in range(len(order) + 1):
             if depth > 0 and order[depth - 1] not in operands:
                 state[depth, i] = state[depth - 1, i]
@@ -143,7 +156,9 @@ def _arrays(
             steps = [count ** (len(axes) - 1 - k) for k in range(len(axes))]
             stride.append(steps + [0] * (deepest - len(row)))
             begins = [
-                store.place(instance.profiles[i][c], tuple(axes))
+                store.row(instance.profiles[i][c])
+                if direct[i]
+                else store.place(instance.profiles[i][c], tuple(axes))
                 for c in choice.recipes[i]
             ]
             at.append(begins + [0] * (widest - len(begins)))
@@ -153,8 +168,11 @@ def _arrays(
         "who": np.array(who, dtype=np.int64),
         "stride": np.array(stride, dtype=np.int64),
         "at": np.array(at, dtype=np.int64),
-        "cost": np.concatenate(store.costs),
-        "length": np.concatenate(store.lengths),
+        "cost": np.concatenate([*store.costs, np.zeros(1, dtype=np.int64)]),
+        "length": np.concatenate([*store.lengths, np.zeros(1, dtype=np.int64)]),
+        "direct": direct,
+        "wires": wires,
+        "parts": parts_of(store.rows, count),
     }
     return tables, store.reach
 
@@ -170,8 +188,22 @@ class _Store:
         self.costs: list[Ints] = []
         self.lengths: list[Ints] = []
         self.size = 0
+        self.rows: list[Reach] = []
+        self.row_of: dict[int, int] = {}
 
-    def place(self, profile, axes: tuple[int, ...]) -> int:  # type: ignore[no-untyped-def]
+    def _reach(self, profile: Profile) -> Reach:
+        if id(profile) not in self.reach:
+            self.reach[id(profile)] = reach_of(self.instance, profile)
+        return self.reach[id(profile)]
+
+    def row(self, profile: Profile) -> int:
+        """Return the row of a recipe that has no arrays."""
+        if id(profile) not in self.row_of:
+            self.row_of[id(profile)] = len(self.rows)
+            self.rows.append(self._reach(profile))
+        return self.row_of[id(profile)]
+
+    def place(self, profile: Profile, axes: tuple[int, ...]) -> int:
         """Return where the array over some operands begins."""
         key = (id(profile), axes)
         if key in self.begins:

@@ -8,13 +8,13 @@ by `placement.evaluate`, never believed.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Literal
 
 from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
 from placer.planner.cpsat import Run
-from placer.planner.model import JointModel, Open, everything
+from placer.planner.model import JointModel, Open, everything, size_of
 from placer.planner.placement import (
     Instance,
     Misfit,
@@ -63,6 +63,8 @@ def solve(
     return _Solve(instance, choice, seed, workers).run(work, hint)
 
 
+LARGEST_MODEL = 300_000
+"""Clauses, about, up to which the solver gets the whole model (below 1 GiB)."""
 WORTH_A_SECOND_RUN = 1.0
 """Deterministic work from which a second search, made for bounds, pays."""
 
@@ -85,11 +87,9 @@ class _Solve:
         """Search in stages until the cost meets the bound or the work is done."""
         if hint is not None and _is_allowed(self.instance, self.choice, hint):
             self._take(hint)
-        is_walked = False
-        if self.placement is not None:
-            is_walked = self._walk(work)
-            if self._is_proven():
-                return self._answer()
+        is_walked = self._walk(work)
+        if self._is_proven() or size_of(self.instance, self.choice) > LARGEST_MODEL:
+            return self._answer()
         joint = JointModel(self.instance, self.choice)
         start = self.placement or hint
         if start is not None:
@@ -97,10 +97,7 @@ class _Solve:
         fault = joint.model.validate()
         if fault:
             raise InternalError(f"the joint model is invalid: {fault}")
-        status = self._search(joint, 0.5 * work, by_bound=False)
-        if status == cp_model.INFEASIBLE:
-            if self.placement is not None:
-                raise InternalError("the joint model denies a placement that exists")
+        if not self._search(joint, 0.5 * work, by_bound=False):
             return Answer("none", None, None, None)
         if self.placement is None:
             return Answer("out-of-work", None, None, self.bound)
@@ -109,14 +106,15 @@ class _Solve:
         if not self._is_proven() and work > WORTH_A_SECOND_RUN:
             # A second search raises the bound; the first one's solution is its hint.
             joint.hint(self.placement)
-            status = self._search(joint, 0.5 * work, by_bound=True)
-            if status == cp_model.INFEASIBLE:
-                raise InternalError("the joint model denies its own solution")
+            self._search(joint, 0.5 * work, by_bound=True)
         return self._answer()
 
     def _walk(self, work: float) -> bool:
         """Try every place of the wires, if there are not too many."""
-        if self.cost is None or not can_prove(self.instance, self.choice):
+        if self.cost is None or not can_prove(self.instance):
+            return False
+        if self.choice != everything(self.instance):
+            # In a window most wires are fixed: the solver is faster than the arrays.
             return False
         found = prove(
             self.instance, self.choice, beat=self.cost, work=work, seed=self.seed
@@ -126,15 +124,17 @@ class _Solve:
         self._raise(found.bound)
         return True
 
-    def _search(self, joint: JointModel, work: float, *, by_bound: bool) -> Any:
-        """Let the solver search the whole model."""
+    def _search(self, joint: JointModel, work: float, *, by_bound: bool) -> bool:
+        """Let the solver search the whole model; return whether it may have a plan."""
         run = Run(joint.model, joint.constant, seed=self.seed, workers=self.workers)
         status = run.solve(work, by_bound=by_bound)
         if status == cp_model.INFEASIBLE:
-            return status
+            if self.placement is not None:
+                raise InternalError("the joint model denies a placement that exists")
+            return False
         self._raise(run.bound())
         if status == cp_model.UNKNOWN:
-            return status
+            return True
         placement = tighten(self.instance, joint.read(run.solver))
         cost = evaluate(self.instance, placement).cost
         if status == cp_model.OPTIMAL:
@@ -144,7 +144,7 @@ class _Solve:
                 )
             self._raise(cost)
         self._take(placement)
-        return status
+        return True
 
     def _take(self, placement: Placement) -> None:
         """Keep a placement if it is the cheapest so far."""
@@ -163,9 +163,9 @@ class _Solve:
         )
 
     def _answer(self) -> Answer:
-        if self.cost is None or self.bound is None:
+        if self.cost is None:
             return Answer("out-of-work", None, None, self.bound)
-        if self.bound > self.cost:
+        if self.bound is not None and self.bound > self.cost:
             raise InternalError(
                 f"the bound {self.bound} passes the cost {self.cost} of a placement"
             )

@@ -59,7 +59,7 @@ class Lens:
         """Return the leaf of a place; `place` gives positions in branching order."""
         walk, instance = self.branches.walk, self.instance
         at = dict(zip(self.branches.order, (int(p) for p in place), strict=True))
-        fixed = walk.constant + sum(int(walk.alone[b, p]) for b, p in enumerate(place))
+        fixed = sum(int(walk.alone[b, p]) for b, p in enumerate(place))
         rate = walk.rate[np.asarray(place, dtype=np.int64)] - walk.rate.min()
         pays = walk.pays + np.einsum("b,kbi->ki", rate, walk.chain)
         grids = [

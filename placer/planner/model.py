@@ -11,6 +11,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
+import numpy as np
 from ortools.sat.python import cp_model
 
 from placer.planner.charges import Charges, Prices
@@ -40,6 +41,27 @@ def everything(instance: Instance) -> Open:
         tuple(tuple(range(len(row))) for row in instance.profiles),
         tuple(sites for _ in range(instance.steps)),
     )
+
+
+def size_of(instance: Instance, choice: Open) -> int:
+    """Return about how many clauses the prices of pairs take in the model."""
+    tables = instance.tables
+    clauses = 0
+    levels: dict[tuple[Mask, frozenset[int]], int] = {}
+    for step, row in enumerate(choice.recipes):
+        wires = [choice.sites[w] for w in instance.operands[step]]
+        for c in row:
+            profile = instance.profiles[step][c]
+            slots = [choice.slot_sites[step]] * len(profile.built.slots)
+            domains = [*wires, *slots]
+            for pair in profile.pairs:
+                sites = frozenset((*domains[pair.a], *domains[pair.b]))
+                key = (pair.mask, sites)
+                if key not in levels:
+                    inside = np.ix_(sorted(sites), sorted(sites))
+                    levels[key] = len(np.unique(tables.pair_cost(pair.mask)[inside]))
+                clauses += levels[key] * len(sites)
+    return clauses
 
 
 class JointModel:

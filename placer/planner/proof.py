@@ -20,7 +20,6 @@ from placer.planner.leaves import Lens
 from placer.planner.model import JointModel, everything
 from placer.planner.placement import evaluate
 from placer.planner.sitetree import walk
-from placer.planner.steptables import is_small
 from placer.planner.symmetry import representatives, symmetries
 
 if TYPE_CHECKING:
@@ -30,14 +29,18 @@ if TYPE_CHECKING:
     from placer.planner.model import Open
     from placer.planner.placement import Instance, Placement
 
-NODES_PER_WORK = 1_500_000
-"""Nodes of the walk that count as one unit of deterministic work."""
+NODES_PER_WORK = 12_000_000
+"""Nodes of the walk, times steps, that count as one unit of deterministic work."""
+DIRECT_WEIGHT = 60
+"""Steps that one step without arrays counts for."""
 LOOK_WORK = 0.001
 """Work that a closer look at a leaf counts for."""
 LEAF_WORK = 0.02
 """Work that building the model of a leaf counts for."""
 MOST_LEAVES = 30_000
-WALK_SHARE = 0.3
+MOST_WIRES = 24
+MOST_STEPS = 64
+WALK_SHARE = 0.25
 """Share of the work that one walk may take."""
 LIMITS = (100, 97, 93, 87, 80, 70, 55)
 """Per cent of the cost to beat: a walk that is too long is tried with a lower limit."""
@@ -56,11 +59,10 @@ class Proof:
     spent: float
 
 
-def can_prove(instance: Instance, choice: Open) -> bool:
-    """Whether the arrays fit, and there is anything to place at all."""
-    return any(wire.uses for wire in instance.wires) and is_small(
-        instance, choice.recipes
-    )
+def can_prove(instance: Instance) -> bool:
+    """Whether there is something to place, and not more than a walk can bound."""
+    branched = sum(1 for wire in instance.wires if wire.uses)
+    return 0 < branched <= MOST_WIRES and instance.steps <= MOST_STEPS
 
 
 def prove(
@@ -70,6 +72,8 @@ def prove(
     is_full = choice == everything(instance)
     turns = symmetries(instance) if is_full else [tuple(range(len(instance.usable)))]
     branches = branches_of(instance, choice, representatives(turns))
+    weight = sum(DIRECT_WEIGHT if d else 1 for d in branches.walk.direct)
+    speed = NODES_PER_WORK / weight
     spent = 0.0
     for share in LIMITS:
         limit = beat * share // 100
@@ -77,9 +81,9 @@ def prove(
             branches.walk,
             limit,
             most_leaves=MOST_LEAVES,
-            most_nodes=int(WALK_SHARE * work * NODES_PER_WORK),
+            most_nodes=int(WALK_SHARE * work * speed),
         )
-        spent += nodes / NODES_PER_WORK
+        spent += nodes / speed
         if not is_done:
             continue
         queue = [

@@ -13,6 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from placer.compiled import compiled, inner
+from placer.planner.stepdirect import Parts, bound_recipe
+from placer.planner.steptables import ENDLESS, NEVER
 
 Ints = NDArray[np.int64]
 Bools = NDArray[np.bool_]
@@ -29,9 +31,11 @@ class Walk:
     `at[state, c]` of `cost` and `length`.  `choices` (C): recipes per step.
     `chain[k, b, i]`: wire b pays decay over step i in the k-th set of chains;
     `pays[k, i]`: the rate paid for step i before any wire is placed.
-    `before` (C, C): direct order; `first`, `last` (B): use at which a wire's decay
-    begins (-1: at 0) and ends (-1: with the program).  `others`: rate of wires that
-    are never placed and pay throughout.
+    `before` (C, K): steps that directly precede a step, -1 for none; `first`, `last`
+    (B): use at which a wire's decay begins (-1: at 0) and ends (-1: with the
+    program).  `others`: rate of wires that are never placed and pay throughout.
+    Steps with `direct` (C) have no arrays: operand a is the wire `wires[i, a]` (-1:
+    none), and recipe c is row `at[state, c]` of `parts`.
     """
 
     domain: Bools
@@ -48,11 +52,13 @@ class Walk:
     choices: Ints
     chain: Bools
     pays: Ints
-    before: Bools
+    before: Ints
     first: Ints
     last: Ints
     others: int
-    constant: int
+    direct: Bools
+    wires: Ints
+    parts: Parts
 
 
 def walk(
@@ -81,7 +87,18 @@ def walk(
         given.first,
         given.last,
         given.others,
-        given.constant,
+        given.direct,
+        given.wires,
+        given.parts.pairs,
+        given.parts.ends,
+        given.parts.price,
+        given.parts.moves,
+        given.parts.floor,
+        given.parts.width,
+        given.parts.alone,
+        given.parts.base,
+        NEVER,
+        ENDLESS,
         limit,
         most_leaves,
         most_nodes,
@@ -119,8 +136,8 @@ def _bound(  # type: ignore[no-untyped-def]
         total += least
         short[i] = brief
         begin = 0
-        for j in range(i):
-            if before[j, i]:
+        for j in before[i]:
+            if j >= 0:
                 begin = max(begin, ready[j])
         ready[i] = begin + brief
         makespan = max(makespan, ready[i])
@@ -142,8 +159,8 @@ def _span(first, last, short, before):  # type: ignore[no-untyped-def]
     far[first] = short[first]
     most = far[first]
     for i in range(first + 1, steps):
-        for j in range(first, i):
-            if before[j, i] and far[j] >= 0:
+        for j in before[i]:
+            if j >= 0 and far[j] >= 0:
                 far[i] = max(far[i], far[j] + short[i])
         most = max(most, far[i])
     return most if last < 0 else max(far[last], 0)
@@ -169,7 +186,18 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
     first,
     last,
     others,
-    constant,
+    direct,
+    operand,
+    pairs,
+    ends,
+    price,
+    moves,
+    floor,
+    width,
+    single,
+    base,
+    never,
+    endless,
     limit,
     most_leaves,
     most_nodes,
@@ -184,7 +212,6 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
     rates = np.full(wires + 1, low, dtype=np.int64)
     rates[wires] = others
     fixed = np.zeros(wires + 1, dtype=np.int64)
-    fixed[0] = constant
     least = np.zeros(wires, dtype=np.int64)
     for b in range(wires):
         least[b] = alone[b].max()
@@ -193,10 +220,28 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
                 least[b] = min(least[b], alone[b, p])
         fixed[0] += least[b]
     paid[0] = pays
+    where = np.full(single.shape[1], -1, dtype=np.int64)
     for i in range(steps):
         for c in range(choices[i]):
-            costs[0, i, c] = cost[at[state[0, i], c]]
-            lengths[0, i, c] = length[at[state[0, i], c]]
+            row = at[state[0, i], c]
+            if direct[i]:
+                costs[0, i, c], lengths[0, i, c] = bound_recipe(
+                    row,
+                    where,
+                    pairs,
+                    ends,
+                    price,
+                    moves,
+                    floor,
+                    width,
+                    single,
+                    base,
+                    never,
+                    endless,
+                )
+            else:
+                costs[0, i, c] = cost[row]
+                lengths[0, i, c] = length[row]
     short = np.zeros(steps, dtype=np.int64)
     ready = np.zeros(steps, dtype=np.int64)
     place = np.full(wires, -1, dtype=np.int64)
@@ -236,6 +281,28 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
                 for c in range(choices[i]):
                     costs[depth + 1, i, c] = costs[depth, i, c]
                     lengths[depth + 1, i, c] = lengths[depth, i, c]
+                continue
+            if direct[i]:
+                for a in range(operand.shape[1]):
+                    b = operand[i, a]
+                    if b >= 0:
+                        where[a] = place[b] if b <= depth else -1
+                for c in range(choices[i]):
+                    costs[depth + 1, i, c], lengths[depth + 1, i, c] = bound_recipe(
+                        at[now, c],
+                        where,
+                        pairs,
+                        ends,
+                        price,
+                        moves,
+                        floor,
+                        width,
+                        single,
+                        base,
+                        never,
+                        endless,
+                    )
+                where[:] = -1
                 continue
             index = 0
             for j in range(known[now]):

@@ -26,7 +26,7 @@ NEVER = 1 << 50
 """A cost no plan has: sums of a few of them stay below 2^63."""
 ENDLESS = 1 << 30
 """A duration no step has, in ns; times a rate it stays below 2^63."""
-LARGEST = 12_000_000
+LARGEST = 8_000_000
 """Entries that the arrays of one instance may have together."""
 WIDEST = 500_000
 """Entries of one slice while slots are placed together."""
@@ -76,14 +76,23 @@ def reach_of(instance: Instance, profile: Profile) -> Reach:
     return Reach(tuple(sites), tuple(alone), price, moves, profile.base_ns)
 
 
-def is_small(instance: Instance, recipes: Sequence[Sequence[int]]) -> bool:
-    """Whether the arrays of an instance stay within bounds."""
-    seen: dict[int, int] = {}
-    for step, row in enumerate(recipes):
-        for c in row:
-            size = len(instance.usable) ** len(instance.operands[step])
-            seen[id(instance.profiles[step][c])] = size
-    return sum(seen.values()) <= LARGEST
+def are_direct(instance: Instance, recipes: Sequence[Sequence[int]]) -> list[bool]:
+    """Return which steps get no arrays: the widest ones, until the rest is small."""
+    widths = [len(operands) for operands in instance.operands]
+    direct = [False] * instance.steps
+    for width in sorted(set(widths), reverse=True):
+        seen = {
+            id(instance.profiles[i][c]): len(instance.usable) ** widths[i]
+            for i, row in enumerate(recipes)
+            if not direct[i]
+            for c in row
+        }
+        if sum(seen.values()) <= LARGEST:
+            break
+        direct = [
+            is_direct or w == width for is_direct, w in zip(direct, widths, strict=True)
+        ]
+    return direct
 
 
 def least_over_slots(profile: Profile, reach: Reach) -> tuple[Ints, Ints]:

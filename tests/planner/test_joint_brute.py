@@ -12,6 +12,7 @@ from typing import Any
 
 import pytest
 
+from placer.planner import steptables
 from placer.planner.joint import everything, solve
 from placer.planner.loop import run
 from placer.planner.placement import (
@@ -63,7 +64,7 @@ def compare(seed: int) -> None:
 def walked(instance: Any, beat: int) -> tuple[int | None, int]:
     """Return the cost that the walk over all sites found, and what it proved."""
     choice = everything(instance)
-    assert can_prove(instance, choice)
+    assert can_prove(instance)
     found = prove(instance, choice, beat=beat, work=30.0, seed=0)
     if found.placement is None:
         assert found.cost == beat
@@ -163,3 +164,9 @@ def test_the_whole_engine_ends_at_the_optimum(seed: int) -> None:
     )
     assert outcome.judged.estimate == least
     assert outcome.is_proven
+
+
+@pytest.mark.parametrize("seed", range(300, 330))
+def test_steps_too_wide_for_tables(seed: int, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(steptables, "LARGEST", 0)
+    compare(seed)
