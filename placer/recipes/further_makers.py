@@ -74,6 +74,20 @@ def compare_lookahead(signature: Signature) -> Made:
     return Made(turned(draft, a), same("clean", need))
 
 
+def compare_fourier(signature: Signature) -> Made:
+    """Return [A < B] or [A < constant] as the borrow of a subtraction, taken back."""
+    place = layout(signature)
+    a = place.registers[0]
+    longer = (*a, result_of(place))
+    if signature.constant is None:
+        control, b = control_of(place), place.registers[1]
+        down = fourier.add(b, longer, control).inverse()
+        return Made(down + fourier.add(b, a, control))
+    value, controls = signature.constant, place.controls
+    down = fourier.add_constant(-value, longer, controls)
+    return Made(down + fourier.add_constant(value, a, controls))
+
+
 def _not_below(signature: Signature, place: Layout) -> constants.Chain | None:
     """Return [A >= constant] as a chain: the carry of A + (2^n - constant)."""
     wires = place.registers[0]

@@ -74,13 +74,15 @@ def check_small(wanted: list[Signature]) -> int:
     return sum(check_all(name, signature) for name, signature in cases(wanted))
 
 
-@pytest.mark.parametrize(("size", "controls"), [(1, 0), (1, 1), (1, 2), (2, 0), (2, 1)])
+@pytest.mark.parametrize(
+    ("size", "controls"), [(1, 0), (1, 1), (1, 2), (2, 0), (2, 1), (3, 0)]
+)
 def test_all_superposed(size: int, controls: int) -> None:
     assert check_small(list(signatures(size, controls))) > 50
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize(("size", "controls"), [(3, 0), (2, 2), (3, 1), (4, 0)])
+@pytest.mark.parametrize(("size", "controls"), [(2, 2), (3, 1), (4, 0)])
 def test_all_superposed_of_larger_calls(size: int, controls: int) -> None:
     assert check_small(list(signatures(size, controls))) > 50
 
