@@ -61,18 +61,18 @@ SIGNED = BITWISE | {"h", "measure", "z", "cz"}
 
 
 def replay_signed(
-    ops: Iterable[Op], words: np.ndarray, outcomes: np.random.Generator
+    ops: Iterable[Op], words: np.ndarray, outcomes: Iterable[bool]
 ) -> tuple[np.ndarray, np.ndarray]:
     """Return bit slices and signs after X-type gates and X-basis measurements.
 
-    One outcome is drawn for each measurement, the same for all inputs.  A wire that
+    There is one outcome for each measurement, the same for all inputs.  A wire that
     holds b gives outcome m the sign (-1)^(bm) and comes to hold m.  An `h` must be
     followed by the measurement of its wire.
     """
     words = words.copy()
     sign = np.zeros(words.shape[1], dtype=np.uint64)
     opened: int | None = None
-    bits: dict[int, bool] = {}
+    drawn, bits = iter(outcomes), dict[int, bool]()
     for op in ops:
         if opened is not None and op.name != "measure":
             raise ValueError(f"{op.name} before the measurement of wire {opened}")
@@ -81,7 +81,7 @@ def replay_signed(
         elif op.name == "measure":
             if opened != op.wires[0] or op.bit is None or op.bit in bits:
                 raise ValueError("a measurement that is not in the X basis")
-            bits[op.bit] = bool(outcomes.integers(0, 2))
+            bits[op.bit] = next(drawn)
             if bits[op.bit]:
                 sign ^= words[opened]
             words[opened] = np.uint64(0xFFFFFFFFFFFFFFFF * bits[op.bit])

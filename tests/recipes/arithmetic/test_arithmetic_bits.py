@@ -117,11 +117,14 @@ def check_random(name: str, signature: Signature, rows: Rows) -> bool:
         if slot == "borrowed":
             slots[at] = rng.random(count) < 0.5
     before, after = (np.vstack([part, slots]) for part in rows)
-    words, sign = replay_signed(built.coarse.ops, slices(before), rng)
-    assert (columns(words, count) == after).all(), (name, signature)
-    # One sign for all inputs is a global phase.
-    signs = columns(sign[None, :], count)
-    assert signs.all() or not signs.any(), (name, signature)
+    drawn = [bool(bit) for bit in rng.integers(0, 2, size=built.coarse.bits)]
+    # The opposite outcomes as well, so that every fix is needed once.
+    for outcomes in (drawn, [not bit for bit in drawn])[: 2 if drawn else 1]:
+        words, sign = replay_signed(built.coarse.ops, slices(before), outcomes)
+        assert (columns(words, count) == after).all(), (name, signature)
+        # One sign for all inputs is a global phase.
+        signs = columns(sign[None, :], count)
+        assert signs.all() or not signs.any(), (name, signature)
     return True
 
 
