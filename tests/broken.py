@@ -1,49 +1,74 @@
 """Spoil a good plan in exactly one way, one breaker per rule of the check.
 
 A breaker takes the parsed JSON of a good plan and a random generator, and returns a
-spoiled copy, or `None` if this plan offers no chance.  Rules about what a recipe
-computes cannot be broken from the file alone, since recipes are built again by the
-check: their breakers spoil what it builds (see `RECIPE_BREAKERS`).
+spoiled copy, or `None` if this plan offers no chance.  `FOLLOWS` says which further
+rules may be named with a breaker's own: what is moved costs and takes something else.
 """
 
 from __future__ import annotations
 
 import copy
-import dataclasses
 import hashlib
 import json
 import random
-import re
 from collections.abc import Callable
 from typing import Any
 
-from placer.recipes.circuit import Built, Circuit, Op
+from placer.check.verify import check_plan
+from placer.device.read import read_device
+from placer.program.read import read_program
+from tests import broken_sources
+from tests.broken_sources import (
+    Data,
+    calls_with,
+    kept_wires,
+    lent_leases,
+    operands_of,
+    unknown_wires,
+)
 
-Data = dict[str, Any]
 Breaker = Callable[[Data, "random.Random"], Data | None]
-
-
-def _calls(data: Data, *, leased: str = "") -> list[Data]:
-    calls = [c for c in data["calls"] if c["kind"] != ""]
-    if leased:
-        calls = [c for c in calls if any(s["kind"] == leased for s in c["leases"])]
-    return calls
+COUNTED = (
+    "cost",
+    "level2_gates",
+    "measurements",
+    "one_qubit_gates",
+    "sites",
+    "swaps",
+    "t_gates",
+    "time_ns",
+    "two_qubit_gates",
+)
 
 
 def malformed(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    key = draw.choice(["figures", "bound", "wires", "route", "calls"])
+    parent, key = draw.choice(
+        [
+            *((spoiled, key) for key in sorted(spoiled) if key != "format"),
+            *((spoiled["figures"], key) for key in sorted(spoiled["figures"])),
+            *((call, key) for call in spoiled["calls"] for key in sorted(call)),
+        ]
+    )
     if draw.random() < 0.5:
-        del spoiled[key]
+        del parent[key]
     else:
-        spoiled[key] = "nonsense"
+        # No field of a plan takes a list in a list of texts.
+        parent[key] = draw.choice([[["nonsense"]], float("inf"), {"odd": 1}])
     return spoiled
 
 
 def source_changed(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    which = draw.choice(["program", "device"])
-    spoiled[which]["hash"] = hashlib.sha256(b"other").hexdigest()
+    source = spoiled[draw.choice(["program", "device"])]
+    key = draw.choice(["hash", "name", "text"])
+    if key == "hash":
+        source["hash"] = hashlib.sha256(draw.randbytes(4)).hexdigest()
+    elif key == "text":
+        is_yaml = source["syntax"] == "yaml"
+        source["text"] += f"{'#' if is_yaml else '//'} {draw.random()}\n"
+    else:
+        source["name"] += "x"
     return spoiled
 
 
@@ -58,18 +83,12 @@ def wire_missing(data: Data, draw: random.Random) -> Data | None:
 
 def site_unknown(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    name = draw.choice(sorted(spoiled["wires"]))
-    spoiled["wires"][name] = 5000
-    return spoiled
-
-
-def site_out_of_service(data: Data, draw: random.Random) -> Data | None:
-    if "out_of_order: [" not in data["device"]["text"]:
-        return None
-    text = data["device"]["text"].split("out_of_order: [")[1].split("]")[0]
-    spoiled = copy.deepcopy(data)
-    name = draw.choice(sorted(spoiled["wires"]))
-    spoiled["wires"][name] = int(draw.choice(text.split(",")))
+    leases = [lease for call in spoiled["calls"] for lease in call["leases"]]
+    site = draw.randint(2000, 5000)
+    if leases and draw.random() < 0.5:
+        draw.choice(leases)["site"] = site
+    else:
+        spoiled["wires"][draw.choice(sorted(spoiled["wires"]))] = site
     return spoiled
 
 
@@ -78,13 +97,19 @@ def step_missing(data: Data, draw: random.Random) -> Data | None:
     rows = spoiled[draw.choice(["calls", "others"])]
     if not rows:
         return None
-    rows.pop(draw.randrange(len(rows)))
+    at = draw.randrange(len(rows))
+    if draw.random() < 0.5:
+        rows.pop(at)
+    else:
+        rows.append(copy.deepcopy(rows[at]))
     return spoiled
 
 
 def recipe_unknown(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    draw.choice(spoiled["calls"])["recipe"] = "no-such-recipe"
+    # One exists for every call, or for other kinds and sizes only.
+    name = draw.choice(["no-such-recipe", "", "swap"])
+    draw.choice(spoiled["calls"])["recipe"] = name
     return spoiled
 
 
@@ -100,50 +125,22 @@ def recipe_excluded(data: Data, draw: random.Random) -> Data | None:
     return spoiled
 
 
-def capability_missing(data: Data, _: random.Random) -> Data | None:
-    text = data["device"]["text"]
-    measured = [c for c in data["calls"] if "measured" in c["recipe"]]
-    line = next((x for x in text.splitlines() if "conditional_latency_ns" in x), None)
-    if not measured or line is None:
-        return None
-    return _with_device(data, text.replace(line, "  conditional_latency_ns: none"))
-
-
-def _with_device(data: Data, text: str) -> Data:
-    """Return the plan with another device text and the hash that fits it."""
-    from placer.device.read import read_device
-
-    spoiled = copy.deepcopy(data)
-    device = read_device(text, data["device"]["path"])
-    spoiled["device"]["text"] = text
-    spoiled["device"]["hash"] = device.hash
-    return spoiled
-
-
-def level2_missing(data: Data, _: random.Random) -> Data | None:
-    if not any(c["workspace"] == "level2" for c in data["calls"]):
-        return None
-    out = []
-    for line in data["device"]["text"].splitlines():
-        kept = line
-        if line.lstrip().startswith("level2_sites:"):
-            kept = line[: line.index("level2_sites:")] + "level2_sites: none"
-        out.append(kept)
-    return _with_device(data, "\n".join(out) + "\n")
-
-
 def lease_wrong(data: Data, draw: random.Random) -> Data | None:
-    calls = [c for c in data["calls"] if c["leases"]]
-    if not calls:
-        return None
     spoiled = copy.deepcopy(data)
-    call = draw.choice([c for c in spoiled["calls"] if c["leases"]])
+    leased = [call for call in spoiled["calls"] if call["leases"]]
+    if not leased:
+        return None
+    call = draw.choice(leased)
     lease = draw.choice(call["leases"])
-    kind = draw.randrange(3)
+    kind = draw.randrange(5)
     if kind == 0:
         call["leases"].remove(lease)
     elif kind == 1:
         lease["end"] += 10
+    elif kind == 2:
+        lease["slot"] += 1
+    elif kind == 3 and lease["kind"] == "clean":
+        lease["lender"] = draw.choice(sorted(data["wires"]))
     else:
         lease["kind"] = "borrowed" if lease["kind"] == "clean" else "clean"
     return spoiled
@@ -169,81 +166,51 @@ def order_broken(data: Data, draw: random.Random) -> Data | None:
 
 def duration_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
+    by = draw.choice([1, 7, 1000])
+    if spoiled["others"] and draw.random() < 0.5:
+        draw.choice(spoiled["others"])[2] += by
+        return spoiled
     call = draw.choice(spoiled["calls"])
-    call["end"] += 7
+    call["end"] += by
     for lease in call["leases"]:
-        lease["end"] += 7
+        lease["end"] += by
     return spoiled
 
 
 def two_things_one_site(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    calls = [
-        c for c in spoiled["calls"] if any(x["kind"] == "clean" for x in c["leases"])
-    ]
-    if calls and draw.random() < 0.5:
-        lease = draw.choice(draw.choice(calls)["leases"])
-        lease["site"] = draw.choice(sorted(spoiled["wires"].values()))
+    leased = calls_with(spoiled, "clean")
+    kept = kept_wires(data)
+    if leased and draw.random() < 0.5:
+        lease = draw.choice(draw.choice(leased)["leases"])
+        lease["site"] = spoiled["wires"][draw.choice(unknown_wires(data) or kept)]
         return spoiled
-    first, second = draw.sample(sorted(spoiled["wires"]), 2)
+    first, second = draw.sample(kept, 2)
     spoiled["wires"][first] = spoiled["wires"][second]
     return spoiled
-
-
-def _lent(data: Data) -> list[tuple[Data, Data]]:
-    return [(c, x) for c in data["calls"] for x in c["leases"] if x["lender"]]
 
 
 def lender_busy(data: Data, draw: random.Random) -> Data | None:
     # Lend the site of one of the call's own operands.
     spoiled = copy.deepcopy(data)
-    lent = _lent(spoiled)
+    lent = lent_leases(spoiled)
     if not lent:
         return None
     call, lease = draw.choice(lent)
-    operand = _operands(spoiled, call)[0]
+    operand = draw.choice(operands_of(spoiled, call))
     lease["lender"] = operand
     lease["site"] = spoiled["wires"][operand]
     return spoiled
 
 
-def _operands(data: Data, call: Data) -> list[str]:
-    from placer.program.read import read_program
-
-    program = read_program(data["program"]["text"], data["program"]["path"])
-    op = program.operations[call["index"]]
-    return [program.wire_names[w] for w in op.wires]
-
-
-def lender_unlendable(data: Data, draw: random.Random) -> Data | None:
-    from placer.program.read import read_program
-
-    lent = _lent(data)
-    if not lent or data["program"]["syntax"] != "openqasm3":
-        return None
-    _, lease = draw.choice(lent)
-    register = lease["lender"].split("[")[0]
-    lines = []
-    for line in data["program"]["text"].splitlines():
-        if line.startswith("qubit") and line.rstrip(";").split()[-1] == register:
-            lines.append("@placer.keep")
-        lines.append(line)
-    spoiled = copy.deepcopy(data)
-    text = "\n".join(lines) + "\n"
-    program = read_program(text, data["program"]["path"])
-    spoiled["program"]["text"] = text
-    spoiled["program"]["hash"] = program.hash
-    for call in spoiled["calls"]:
-        call["line"] = program.operations[call["index"]].place.line
-    return spoiled
-
-
 def lender_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    lent = _lent(spoiled)
+    lent = lent_leases(spoiled)
     if not lent:
         return None
-    draw.choice(lent)[1]["lender"] = None
+    _, lease = draw.choice(lent)
+    others = [name for name in sorted(data["wires"]) if name != lease["lender"]]
+    lease["lender"] = draw.choice([None, "nobody", *others])
     return spoiled
 
 
@@ -259,14 +226,20 @@ def estimate_misstated(data: Data, draw: random.Random) -> Data | None:
 
 def route_incomplete(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    gaps = [gap for gap in spoiled["route"]["gaps"] if gap]
+    route = spoiled["route"]
+    gaps = [gap for gap in route["gaps"] if gap]
     if not gaps:
         return None
     gap = draw.choice(gaps)
-    if draw.random() < 0.5:
-        gap.append(list(gap[0]))
+    kind = draw.randrange(4)
+    if kind == 0:
+        gap.append(list(draw.choice(gap)))
+    elif kind == 1:
+        gap.pop(draw.randrange(len(gap)))
+    elif kind == 2:
+        gap[-1][1] += 10**6
     else:
-        gap.pop()
+        route["gaps"].insert(draw.randrange(len(route["gaps"])), [])
     return spoiled
 
 
@@ -275,16 +248,19 @@ def route_off_link(data: Data, draw: random.Random) -> Data | None:
     swaps = spoiled["route"]["swaps"]
     if not swaps:
         return None
-    swaps[draw.randrange(len(swaps))][1] = swaps[0][0] + 7
+    linked = {frozenset(pair) for pair in _links(data)}
+    swap = draw.choice(swaps)
+    sites = range(max(max(pair) for pair in _links(data)) + 1)
+    apart = [p for p in sites if frozenset((swap[0], p)) not in linked]
+    swap[1] = draw.choice(apart)
     return spoiled
 
 
 def figures_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
     figures = spoiled["figures"]
-    name = draw.choice(["two_qubit_gates", "t_gates", "measurements", "level2_gates"])
     if draw.random() < 0.5:
-        figures[name] += 1
+        figures[draw.choice(COUNTED)] += draw.randint(1, 3)
     else:
         # Of decay, one unit per wait is left to the last bit of exp.
         cause = draw.choice(sorted(figures["costs"]))
@@ -292,9 +268,9 @@ def figures_misstated(data: Data, draw: random.Random) -> Data | None:
     return spoiled
 
 
-def success_misstated(data: Data, _: random.Random) -> Data | None:
+def success_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    value = spoiled["figures"]["success"] * (1 - 1e-6)
+    value = spoiled["figures"]["success"] * (1 - draw.choice([1e-6, 1e-3, -1e-7]))
     spoiled["figures"]["success"] = value
     for limit in spoiled["verdict"]["limits"]:
         if limit["name"] == "success":
@@ -400,107 +376,56 @@ def share_misstated(data: Data, draw: random.Random) -> Data | None:
 
 def limit_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    limit = draw.choice(spoiled["verdict"]["limits"])
-    limit["value"] += 0.25
+    limits = spoiled["verdict"]["limits"]
+    limit = draw.choice(limits)
+    kind = draw.randrange(5)
+    if kind == 0:
+        limit["value"] += 0.25
+    elif kind == 1:
+        limit["limit"] = 0.99 if limit["limit"] is None else None
+    elif kind == 2:
+        limit["holds"] = not limit["holds"]
+    elif kind == 3:
+        limits.remove(limit)
+    else:
+        limit["about"] += "x"
     return spoiled
 
 
-def verdict_misstated(data: Data, _: random.Random) -> Data | None:
+def verdict_misstated(data: Data, draw: random.Random) -> Data | None:
     spoiled = copy.deepcopy(data)
-    spoiled["verdict"]["fits"] = not spoiled["verdict"]["fits"]
+    verdict = spoiled["verdict"]
+    fits = verdict["fits"]
+    if draw.random() < 0.5:
+        verdict["fits"] = not fits
+    if verdict["fits"] == fits or draw.random() < 0.5:
+        verdict["sentence"] = "does not fit: no" if fits else "fits: yes"
     return spoiled
-
-
-BREAKERS: dict[str, Breaker] = {
-    "plan-malformed": malformed,
-    "source-changed": source_changed,
-    "wire-missing": wire_missing,
-    "site-unknown": site_unknown,
-    "site-out-of-service": site_out_of_service,
-    "step-missing": step_missing,
-    "recipe-unknown": recipe_unknown,
-    "recipe-excluded": recipe_excluded,
-    "capability-missing": capability_missing,
-    "level2-missing": level2_missing,
-    "lease-wrong": lease_wrong,
-    "order-broken": order_broken,
-    "duration-misstated": duration_misstated,
-    "two-things-one-site": two_things_one_site,
-    "lender-busy": lender_busy,
-    "lender-unlendable": lender_unlendable,
-    "lender-misstated": lender_misstated,
-    "estimate-misstated": estimate_misstated,
-    "route-incomplete": route_incomplete,
-    "route-off-link": route_off_link,
-    "figures-misstated": figures_misstated,
-    "success-misstated": success_misstated,
-    "bound-above-estimate": bound_above_estimate,
-    "floor-above-cost": floor_above_cost,
-    "proof-misstated": proof_misstated,
-    "policy-misstated": policy_misstated,
-    "header-misstated": header_misstated,
-    "step-misstated": step_misstated,
-    "workspace-misstated": workspace_misstated,
-    "lost-misstated": lost_misstated,
-    "share-misstated": share_misstated,
-    "limit-misstated": limit_misstated,
-    "verdict-misstated": verdict_misstated,
-}
-
-
-def link_out_of_reach(data: Data, draw: random.Random) -> Data | None:
-    # One site alone keeps its third level: two wires that both need it cannot meet.
-    if not any(c["workspace"] == "level2" for c in data["calls"]):
-        return None
-    kept = draw.choice(_level2_sites(data))
-    return _with_device(data, _only_level2(data["device"]["text"], [kept]))
-
-
-def _level2_sites(data: Data) -> list[int]:
-    text = data["device"]["text"].split("level2_sites: [")[1].split("]")[0]
-    return [int(site) for site in text.split(",")]
-
-
-def _only_level2(text: str, kept: list[int]) -> str:
-    """Return a device text in which only some sites keep their third level."""
-    lines = []
-    for line in text.splitlines():
-        site = re.match(r"  (\d+): ", line)
-        if line.lstrip().startswith("level2_sites:"):
-            lines.append(f"  level2_sites: [{', '.join(map(str, kept))}]")
-        elif site and int(site[1]) not in kept:
-            lines.append(re.sub(r", level2: \{[^}]*\}", "", line))
-        else:
-            lines.append(line)
-    return "\n".join(lines) + "\n"
 
 
 def slot_not_clean(data: Data, draw: random.Random) -> Data | None:
     # A clean slot where a wire sits that may hold anything.
-    if data["program"]["syntax"] != "openqasm3":
-        return None
     spoiled = copy.deepcopy(data)
     leases = [x for c in spoiled["calls"] for x in c["leases"] if x["kind"] == "clean"]
-    if not leases:
+    holders = unknown_wires(data)
+    if not leases or not holders:
         return None
-    draw.choice(leases)["site"] = draw.choice(sorted(spoiled["wires"].values()))
+    draw.choice(leases)["site"] = spoiled["wires"][draw.choice(holders)]
     return spoiled
 
 
 def function_differs(data: Data, draw: random.Random) -> Data | None:
     # Two wires that may hold anything on one site: one of them gets lost.
-    if data["program"]["syntax"] != "openqasm3":
+    used = [name for name in kept_wires(data) if name in unknown_wires(data)]
+    if len(used) < 2:
         return None
     spoiled = copy.deepcopy(data)
-    used = {name for call in data["calls"] for name in _operands(data, call)}
-    first, second = draw.sample(sorted(used), 2)
+    first, second = draw.sample(used, 2)
     spoiled["wires"][first] = spoiled["wires"][second]
     return spoiled
 
 
 def workspace_not_returned(data: Data, draw: random.Random) -> Data | None:
-    from placer.program.read import read_program
-
     source = data["program"]
     program = read_program(source["text"], source["path"])
     steps: dict[int, list[int]] = {}
@@ -521,68 +446,12 @@ def workspace_not_returned(data: Data, draw: random.Random) -> Data | None:
     return spoiled
 
 
-def _edited(built: Built, change: Callable[[Circuit], Circuit]) -> Built:
-    return dataclasses.replace(
-        built, coarse=change(built.coarse), fine=change(built.fine)
-    )
-
-
-def _with_flip(built: Built, wire: int) -> Built:
-    """Return the recipe with a wire flipped once too often, at the end."""
-    flip = Op("x", (wire,))
-    return _edited(built, lambda c: dataclasses.replace(c, ops=(*c.ops, flip)))
-
-
-def leave_slot_set(built: Built, draw: random.Random) -> Built | None:
-    clean = [s for s, kind in enumerate(built.slots) if kind == "clean"]
-    return (
-        _with_flip(built, built.fine.operands + draw.choice(clean)) if clean else None
-    )
-
-
-def leave_borrowed_changed(built: Built, draw: random.Random) -> Built | None:
-    lent = [s for s, kind in enumerate(built.slots) if kind == "borrowed"]
-    return _with_flip(built, built.fine.operands + draw.choice(lent)) if lent else None
-
-
-def wrong_gate(built: Built, draw: random.Random) -> Built | None:
-    """Return the recipe without one gate, or with one turned the other way."""
-    level = draw.choice(["fine", "coarse"])
-    circuit = getattr(built, level)
-    at = draw.randrange(len(circuit.ops))
-    op = circuit.ops[at]
-    mirrors = {"t": "tdg", "tdg": "t", "s": "sdg", "sdg": "s"}
-    other: tuple[Op, ...] = ()
-    if op.name in mirrors and draw.random() < 0.5:
-        other = (dataclasses.replace(op, name=mirrors[op.name]),)
-    ops = (*circuit.ops[:at], *other, *circuit.ops[at + 1 :])
-    made = dataclasses.replace(circuit, ops=ops)
-    return dataclasses.replace(built, **{level: made})
-
-
-BREAKERS.update(
-    {
-        "link-out-of-reach": link_out_of_reach,
-        "slot-not-clean": slot_not_clean,
-        "function-differs": function_differs,
-        "workspace-not-returned": workspace_not_returned,
-    }
-)
-RECIPE_BREAKERS: dict[str, Callable[[Built, random.Random], Built | None]] = {
-    "slot-not-returned": leave_slot_set,
-    "borrowed-changed": leave_borrowed_changed,
-    "recipe-wrong": wrong_gate,
-}
-
-
 def _with_extra_swap(data: Data, draw: random.Random, rule: str) -> Data | None:
     """Insert a swap at random until the check names the rule, a few times at most.
 
     Whether a swap meets something in level 2 depends on where everything is by then;
     the check is the only one who knows, so it is asked.
     """
-    from placer.check.verify import check_plan
-
     if not any(c["workspace"] == "level2" for c in data["calls"]):
         return None
     count = sum(
@@ -611,27 +480,130 @@ def _with_extra_swap(data: Data, draw: random.Random, rule: str) -> Data | None:
 
 
 def _links(data: Data) -> list[tuple[int, int]]:
-    from placer.device.read import read_device
-
     device = read_device(data["device"]["text"], data["device"]["path"])
     return [(k.a, k.b) for k in device.links if device.is_usable(k)]
-
-
-def level2_off_link(data: Data, draw: random.Random) -> Data | None:
-    # A site that a chain passes through loses its third level: its gates then find
-    # no fitting link, at home and on the route.
-    used = [c for c in data["calls"] if c["workspace"] == "level2"]
-    if not used:
-        return None
-    inner = _operands(data, draw.choice(used))[1:-1]
-    site = data["wires"][draw.choice(inner)]
-    left = [kept for kept in _level2_sites(data) if kept != site]
-    return _with_device(data, _only_level2(data["device"]["text"], left))
 
 
 def swap_while_level2(data: Data, draw: random.Random) -> Data | None:
     return _with_extra_swap(data, draw, "swap-while-level2")
 
 
-BREAKERS["level2-off-link"] = level2_off_link
-BREAKERS["swap-while-level2"] = swap_while_level2
+BREAKERS: dict[str, Breaker] = {
+    "plan-malformed": malformed,
+    "source-changed": source_changed,
+    "header-misstated": header_misstated,
+    "step-missing": step_missing,
+    "step-misstated": step_misstated,
+    "wire-missing": wire_missing,
+    "site-unknown": site_unknown,
+    "site-out-of-service": broken_sources.site_out_of_service,
+    "recipe-unknown": recipe_unknown,
+    "workspace-misstated": workspace_misstated,
+    "lease-wrong": lease_wrong,
+    "lost-misstated": lost_misstated,
+    "recipe-excluded": recipe_excluded,
+    "capability-missing": broken_sources.capability_missing,
+    "level2-missing": broken_sources.level2_missing,
+    "link-out-of-reach": broken_sources.link_out_of_reach,
+    "order-broken": order_broken,
+    "duration-misstated": duration_misstated,
+    "two-things-one-site": two_things_one_site,
+    "lender-busy": lender_busy,
+    "lender-unlendable": broken_sources.lender_unlendable,
+    "lender-misstated": lender_misstated,
+    "estimate-misstated": estimate_misstated,
+    "function-differs": function_differs,
+    "slot-not-clean": slot_not_clean,
+    "workspace-not-returned": workspace_not_returned,
+    "route-incomplete": route_incomplete,
+    "route-off-link": route_off_link,
+    "level2-off-link": broken_sources.level2_off_link,
+    "swap-while-level2": swap_while_level2,
+    "figures-misstated": figures_misstated,
+    "share-misstated": share_misstated,
+    "success-misstated": success_misstated,
+    "bound-above-estimate": bound_above_estimate,
+    "floor-above-cost": floor_above_cost,
+    "proof-misstated": proof_misstated,
+    "policy-misstated": policy_misstated,
+    "limit-misstated": limit_misstated,
+    "verdict-misstated": verdict_misstated,
+}
+
+# What holds another site or another time is somewhere else, at another price, in the
+# way of others, and may find or leave other values.
+_MOVED = {
+    "borrowed-changed",
+    "duration-misstated",
+    "estimate-misstated",
+    "figures-misstated",
+    "function-differs",
+    "lender-busy",
+    "lender-misstated",
+    "level2-missing",
+    "level2-off-link",
+    "route-incomplete",
+    "route-off-link",
+    "share-misstated",
+    "slot-not-clean",
+    "slot-not-returned",
+    "two-things-one-site",
+    "workspace-not-returned",
+}
+_WITHOUT_LEVEL2 = {
+    "duration-misstated",
+    "estimate-misstated",
+    "level2-missing",
+    "level2-off-link",
+    "link-out-of-reach",
+    "swap-while-level2",
+}
+
+FOLLOWS: dict[str, set[str]] = {
+    "site-out-of-service": _MOVED | {"link-out-of-reach"},
+    # Without a latency, or of another length, everything takes another time.
+    "capability-missing": {
+        "duration-misstated",
+        "estimate-misstated",
+        "figures-misstated",
+        "share-misstated",
+    },
+    "duration-misstated": {
+        "estimate-misstated",
+        "lender-busy",
+        "order-broken",
+        "two-things-one-site",
+    },
+    # Leases of another kind are cleaned and charged in another way.
+    "lease-wrong": {
+        "estimate-misstated",
+        "figures-misstated",
+        "lender-misstated",
+        "share-misstated",
+        "slot-not-clean",
+        "two-things-one-site",
+    },
+    "lender-misstated": {
+        "estimate-misstated",
+        "figures-misstated",
+        "share-misstated",
+    },
+    "lender-busy": _MOVED,
+    "order-broken": _MOVED,
+    "two-things-one-site": _MOVED,
+    "function-differs": _MOVED,
+    "slot-not-clean": _MOVED,
+    "workspace-not-returned": _MOVED | {"order-broken"},
+    "level2-missing": _WITHOUT_LEVEL2,
+    "link-out-of-reach": _WITHOUT_LEVEL2,
+    "level2-off-link": _WITHOUT_LEVEL2,
+    "route-incomplete": {"route-off-link"},
+    "swap-while-level2": {"level2-off-link", "route-off-link"},
+    # The limits repeat some figures, and the success sums them up.
+    "figures-misstated": {"limit-misstated", "success-misstated"},
+    "share-misstated": {"limit-misstated"},
+    # A circuit that is wrong at one level or both.
+    "slot-not-returned": {"recipe-wrong", *_MOVED},
+    "borrowed-changed": {"recipe-wrong", *_MOVED},
+    "recipe-wrong": {"function-differs", "level2-off-link", *_MOVED},
+}

@@ -14,7 +14,8 @@ from placer.check.verify import check_plan
 from placer.program.read import read_program
 from placer.recipes import catalog
 from placer.recipes.circuit import Built
-from tests.broken import BREAKERS, RECIPE_BREAKERS
+from tests.broken import BREAKERS, FOLLOWS
+from tests.broken_sources import RECIPE_BREAKERS
 
 MIXED = """OPENQASM 2.0;
 include "qelib1.inc";
@@ -35,6 +36,28 @@ cu1(pi/4) a[2],b[1];
 measure b -> c;
 """
 
+SPLIT = """OPENQASM 3.0;
+include "stdgates.inc";
+qubit[3] a;
+qubit b;
+@placer.workspace init=zero ends=zero
+qubit[2] w;
+bit[3] c;
+h a;
+ctrl(2) @ x a[0], a[1], w[0];
+ctrl(2) @ x w[0], a[2], w[1];
+cx w[1], b;
+ctrl(2) @ x w[0], a[2], w[1];
+ctrl(2) @ x a[0], a[1], w[0];
+barrier a;
+ctrl(3) @ x a[0], a[1], a[2], b;
+c[2] = measure b;
+reset b;
+ctrl(3) @ z a[0], a[1], a[2], b;
+cp(pi/4) a[0], a[2];
+c[0] = measure a[0];
+"""
+
 CASES = {
     "clean": ("tide-gate", "slate-16"),
     "borrowed": ("full-berths", "tuff-10"),
@@ -43,7 +66,9 @@ CASES = {
     "holes": ("tide-gate", "breccia-27"),
     "measured": ("tide-gate", "marl-32"),
     "mixed": (MIXED, "slate-16"),
+    "split": (SPLIT, "slate-16"),
 }
+ONLY = {"split": ("clean",)}
 
 
 @pytest.fixture(scope="session")
@@ -53,7 +78,8 @@ def good() -> dict[str, dict[str, Any]]:
         source: Any = program
         if "\n" in program:
             source = read_program(program, f"{name}.qasm")
-        plan = placer.plan(source, device, effort="quick")
+        only = ONLY.get(name, ())
+        plan = placer.plan(source, device, effort="quick", only=only)
         plans[name] = json.loads(placer.to_json(plan))
     return plans
 
@@ -86,6 +112,7 @@ def test_every_breaker_is_named(rule: str, good: dict[str, dict[str, Any]]) -> N
             result = check_plan(json.dumps(spoiled))
             named = {finding.rule for finding in result.findings}
             assert rule in named, (name, seed, sorted(named))
+            assert named <= {rule} | FOLLOWS.get(rule, set()), (name, seed)
             assert not result.ok
     assert spoiled_any > 0
 
@@ -119,9 +146,13 @@ def spoils(rule: str, data: dict[str, Any], chosen: int, draw: random.Random) ->
     result = check_plan(json.dumps(data), build=build)
     named = {finding.rule for finding in result.findings}
     assert (rule in named) == bool(done), (rule, call["recipe"], done)
+    assert named <= {rule} | FOLLOWS[rule], (rule, call["recipe"])
     return bool(done)
 
 
 def test_every_rule_has_one_breaker() -> None:
     assert sorted(NAMES) == sorted([*BREAKERS, *RECIPE_BREAKERS])
+    assert len(NAMES) == len(BREAKERS) + len(RECIPE_BREAKERS)
+    assert set(FOLLOWS) <= set(NAMES)
+    assert set().union(*FOLLOWS.values()) <= set(NAMES)
     assert all(rule.sentence and rule.sentence[0].islower() for rule in RULES)
