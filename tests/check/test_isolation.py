@@ -6,7 +6,16 @@ import ast
 from pathlib import Path
 
 PACKAGE = Path(__file__).parent.parent.parent / "placer"
-FORBIDDEN = ("placer.planner", "placer.trial", "placer.placed", "placer.tables")
+FORBIDDEN = (
+    "placer.api",
+    "placer.cli",
+    "placer.placed",
+    "placer.planner",
+    "placer.report",
+    "placer.tables",
+    "placer.trial",
+    "ortools",
+)
 
 
 def imported(path: Path) -> set[str]:
@@ -54,7 +63,23 @@ def test_the_check_reaches_neither_planner_nor_solver() -> None:
     assert len(seen) > 20
     for name in sorted(names):
         assert not name.startswith(FORBIDDEN), name
-        assert not name.startswith("ortools"), name
+
+
+def test_imports_are_followed_through_other_rooms(tmp_path: Path) -> None:
+    # Through the api everything is reached: the walk does not stop too early.
+    probe = tmp_path / "probe.py"
+    probe.write_text("from placer import api\n", encoding="utf-8")
+    names, _ = reached([probe])
+    assert {"placer.planner.loop", "ortools.sat.python"} <= names
+
+
+def test_no_import_of_the_check_hides_in_a_call() -> None:
+    for path in sorted((PACKAGE / "check").glob("*.py")):
+        for node in ast.walk(ast.parse(path.read_text(encoding="utf-8"))):
+            if isinstance(node, ast.ImportFrom):
+                assert node.level == 0, path
+            if isinstance(node, ast.Name):
+                assert node.id not in ("__import__", "importlib"), path
 
 
 def test_only_the_planner_imports_the_solver() -> None:
