@@ -1,0 +1,57 @@
+"""Calls run side by side where sites allow, and one after the other where not."""
+
+from __future__ import annotations
+
+import pytest
+
+import placer
+from placer.device.model import Budget
+from placer.program.read import read_program
+
+TWO_CALLS = """OPENQASM 3.0;
+include "stdgates.inc";
+qubit[4] a;
+qubit[4] b;
+ctrl(3) @ x a[0], a[1], a[2], a[3];
+ctrl(3) @ x b[0], b[1], b[2], b[3];
+"""
+
+
+def planned(budget: Budget) -> tuple[placer.Plan, bool]:
+    plan = placer.plan(
+        read_program(TWO_CALLS, "two.qasm"), "slate-16", budget=budget, only=["clean"]
+    )
+    one, two = plan.calls
+    return plan, one.start < two.end and two.start < one.end
+
+
+def test_two_calls_overlap_when_each_has_its_own_clean_site() -> None:
+    plan, is_overlapping = planned(Budget())
+    assert is_overlapping
+    leased = {lease.site for call in plan.calls for lease in call.leases}
+    assert len(leased) >= 2
+
+
+def test_two_calls_take_turns_when_one_clean_site_is_left() -> None:
+    # Eight wires hold eight of nine sites; both calls need a clean one.
+    plan, is_overlapping = planned(Budget(most_sites=9))
+    assert not is_overlapping
+    assert plan.figures.sites <= 9
+    leased = {lease.site for call in plan.calls for lease in call.leases}
+    assert len(leased) == 1
+
+
+@pytest.mark.parametrize("policy", ["clean", "borrowed", "none"])
+def test_only_limits_every_call(policy: str) -> None:
+    plan = placer.plan(
+        read_program(TWO_CALLS, "two.qasm"), "slate-16", only=[policy], effort="quick"
+    )
+    assert {call.workspace for call in plan.calls} == {policy}
+
+
+def test_no_measured_cleanup_where_the_device_cannot() -> None:
+    plan = placer.plan(read_program(TWO_CALLS, "two.qasm"), "chert-27", effort="quick")
+    for call in plan.calls:
+        assert "measured" not in call.recipe
+        reasons = dict(call.lost)
+        assert reasons["clean-measured"] == "the device has no measured cleanup"
