@@ -82,7 +82,8 @@ def plan(
         lines = "\n".join(f"  {f.rule}: {f.where}: {f.what}" for f in verified.findings)
         raise InternalError(f"the plan did not pass its own check:\n{lines}")
     if verified.notes:
-        result = dataclasses.replace(result, notes=tuple(verified.notes))
+        notes = (*result.notes, *verified.notes)
+        result = dataclasses.replace(result, notes=notes)
     return result
 
 

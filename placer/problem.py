@@ -185,7 +185,21 @@ def _need_room(device: Device, program: Program) -> None:
             "take a larger device or a smaller program",
         )
     capabilities = device.capabilities
+    last = {
+        w: op.index
+        for op in program.operations
+        if op.kind != "barrier"
+        for w in op.wires
+    }
     for op in program.operations:
+        is_early = op.kind == "measure" and last[op.wires[0]] > op.index
+        if is_early and not capabilities.mid_circuit_measurement:
+            raise InputError.at(
+                op.place,
+                "no-mid-circuit-measurement",
+                f"device {device.name} cannot measure a wire that is used again later",
+                "measure at the end, or take a device with measurement in mid-circuit",
+            )
         if op.kind == "reset" and not capabilities.reset:
             raise InputError.at(
                 op.place,

@@ -43,10 +43,13 @@ def _check_excluded(case: Case) -> None:
 def _check_capabilities(case: Case) -> None:
     """Measure in mid-circuit, react to it, and reset: only where the device can.
 
-    A measurement is in mid-circuit if its wire is used again.
+    A measurement is in mid-circuit if its wire is used again, by more than a barrier.
     """
     able = case.device.capabilities
-    last = {wire: steps[-1].op.index for wire, steps in case.uses.items()}
+    last = {
+        wire: max((s.op.index for s in steps if s.op.kind != "barrier"), default=-1)
+        for wire, steps in case.uses.items()
+    }
     for step in case.steps:
         kind = step.op.kind
         missing = ""

@@ -60,6 +60,7 @@ class _State:
     recipes: list[int] = field(default_factory=list)
     slots: list[tuple[int, ...]] = field(default_factory=list)
     starts: list[int] = field(default_factory=list)
+    ends: dict[int, int] = field(default_factory=dict)
     makespan: int = 0
 
 
@@ -125,6 +126,7 @@ class _Decoder:
         self.delay_price = mean_rate * max(1, len(held)) * taste.delay_scale
         self.next_use = _next_uses(instance)
         self.hurry, self.due = _hurry(instance, earlier)
+        self.earlier = {two: one for one, two in instance.follows}
         self.floors: dict[Mask, float] = {}
 
     def _floor(self, mask: Mask) -> float:
@@ -229,6 +231,7 @@ class _Decoder:
         operands = self.instance.operands[step]
         where = [state.sites[w] for w in operands]
         ready = max((state.wire_ready[w] for w in operands), default=0)
+        ready = max(ready, state.ends.get(self.earlier.get(step, -1), 0))
         for w in operands:
             wire = self.instance.wires[w]
             if wire.uses[0] == step and wire.is_known_zero:
@@ -376,6 +379,7 @@ class _Decoder:
         state.recipes.append(offer.recipe)
         state.slots.append(offer.slots)
         state.starts.append(offer.start)
+        state.ends[step] = offer.end
         state.makespan = max(state.makespan, offer.end)
         for w in self.instance.operands[step]:
             state.wire_ready[w] = offer.end

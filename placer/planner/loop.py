@@ -19,6 +19,7 @@ from placer.planner.joint import Open, everything, solve, tighten
 from placer.planner.judge import Judge, Judged
 from placer.planner.placement import Instance, Placement, make_instance
 from placer.planner.policies import allowed, everything_allowed
+from placer.planner.proof import can_prove
 from placer.planner.region import narrowed
 from placer.planner.search import Amount, Candidate, search
 from placer.planner.verdict import overrun
@@ -306,7 +307,8 @@ class _Engine:
 
     def solve_joint(self) -> None:
         """Prove the least placement cost where the problem is small enough."""
-        if _joint_size(self.instance) > self.work.joint_size:
+        is_large = _joint_size(self.instance) > self.work.joint_size
+        if is_large and not can_prove(self.instance):
             return
         self.progress("joint model: prove")
         choice: Open = everything(self.instance)

@@ -168,6 +168,8 @@ class JointModel:
         for wire in self.instance.wires:
             for one, two in zip(wire.uses, wire.uses[1:], strict=False):
                 self.model.add(self.start[two] >= self.end[one])
+        for one, two in self.instance.follows:
+            self.model.add(self.start[two] >= self.end[one])
 
     def _horizon(self) -> int:
         furthest = int(self.tables.furthest)

@@ -15,6 +15,7 @@ if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from placer.problem import Problem
+    from placer.program.model import Operation
     from placer.tables import Tables
 
 END = 1 << 62
@@ -48,7 +49,11 @@ class Wire:
 
 @dataclass(frozen=True, slots=True)
 class Instance:
-    """A problem with its device tables and profiles: what every stage works on."""
+    """A problem with its device tables and profiles: what every stage works on.
+
+    `follows` lists steps (earlier, later) that share no wire and still keep their
+    order: measurements into the same classical bit.
+    """
 
     problem: Problem
     tables: Tables
@@ -56,6 +61,7 @@ class Instance:
     operands: tuple[tuple[int, ...], ...]
     profiles: tuple[tuple[Profile, ...], ...]
     usable: tuple[int, ...]
+    follows: tuple[tuple[int, int], ...] = ()
 
     @property
     def steps(self) -> int:
@@ -108,7 +114,20 @@ def make_instance(problem: Problem, tables: Tables) -> Instance:
         tuple(tuple(op.wires) for op in program.operations),
         tuple(profiles),
         tuple(s.id for s in problem.device.sites if s.in_service),
+        _same_bits(program.operations),
     )
+
+
+def _same_bits(operations: Sequence[Operation]) -> tuple[tuple[int, int], ...]:
+    """Return the measurements that write the same bit, each with the next one."""
+    last: dict[str, int] = {}
+    pairs = []
+    for op in operations:
+        if op.bit is not None:
+            if op.bit in last:
+                pairs.append((last[op.bit], op.index))
+            last[op.bit] = op.index
+    return tuple(pairs)
 
 
 def local_sites(
@@ -171,11 +190,13 @@ def schedule(
         if not wire.is_known_zero and not (wire.is_workspace and not wire.uses)
     }
     starts = [0] * instance.steps
+    earlier = {two: one for one, two in instance.follows}
+    ends: dict[int, int] = {}
     for step in order:
         profile = instance.profiles[step][recipes[step]]
         slots = slot_sites[step]
         where = local_sites(instance, step, sites, slots)
-        start = 0
+        start = ends.get(earlier.get(step, -1), 0)
         for w in instance.operands[step]:
             start = max(start, wire_ready[w])
             if instance.wires[w].uses[0] == step and instance.wires[w].is_known_zero:
@@ -186,6 +207,7 @@ def schedule(
                 start = max(start, wire_ready[holder[site]])
         end = start + duration(instance, profile, where)
         starts[step] = start
+        ends[step] = end
         for w in instance.operands[step]:
             wire_ready[w] = end
             wire = instance.wires[w]
@@ -261,6 +283,9 @@ def _stays(
     instance: Instance, placement: Placement, ends: Sequence[int], makespan: int
 ) -> list[Stay]:
     stays: list[Stay] = []
+    for one, two in instance.follows:
+        if placement.starts[two] < ends[one]:
+            raise Misfit(f"steps {one} and {two} write one bit in the wrong order")
     for number, wire in enumerate(instance.wires):
         for one, two in zip(wire.uses, wire.uses[1:], strict=False):
             if placement.starts[two] < ends[one]:

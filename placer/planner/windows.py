@@ -197,6 +197,11 @@ def _cut(
         wires=tuple(small),
         operands=tuple(tuple(number[w] for w in instance.operands[i]) for i in steps),
         profiles=tuple(instance.profiles[i] for i in steps),
+        follows=tuple(
+            (local[a], local[b])
+            for a, b in instance.follows
+            if a in local and b in local
+        ),
         tables=cast("Tables", coarse),
         problem=dataclasses.replace(instance.problem, budget=Budget()),
     )

@@ -55,3 +55,30 @@ def test_no_measured_cleanup_where_the_device_cannot() -> None:
         assert "measured" not in call.recipe
         reasons = dict(call.lost)
         assert reasons["clean-measured"] == "the device has no measured cleanup"
+
+
+MEASURED = """OPENQASM 3.0;
+include "stdgates.inc";
+qubit[3] q;
+bit c;
+ctrl(2) @ x q[0], q[1], q[2];
+c = measure q[2];
+c = measure q[0];
+barrier q;
+"""
+
+
+def test_measurements_into_one_bit_keep_their_order() -> None:
+    # Found by the check: q[0] is free long before q[2], so without a rule its
+    # measurement would come first and the bit would end with another value.
+    plan = placer.plan(read_program(MEASURED, "measured.qasm"), "chert-27")
+    first, second = (step for step in plan.steps if step.kind == "measure")
+    assert first.end <= second.start
+
+
+def test_a_measured_wire_cannot_go_on_where_the_device_measures_only_at_the_end() -> (
+    None
+):
+    text = MEASURED + "h q[2];\n"
+    with pytest.raises(placer.InputError, match="no-mid-circuit-measurement"):
+        placer.plan(read_program(text, "measured.qasm"), "chert-27")
