@@ -102,7 +102,7 @@ class Map:
 
     def fitting(self, op: Op, built: Built) -> list[tuple[int, int, int]]:
         """Return (site of the first wire, of the second, cost) of all fitting links."""
-        found = []
+        found: list[tuple[int, int, int]] = []
         for link in self.links:
             for u, v in ((link.a, link.b), (link.b, link.a)):
                 if op.name != "level2":
@@ -466,7 +466,7 @@ class Trip:
             time = link.level2_ns if op.name == "level2" else link.time_ns
             assert error is not None
             assert time is not None
-            cost = cost_of_error(error)
+            cost = int(cost_of_error(error))
         else:
             _, cost, time = self.map.alone(op, sites[0])
         local = dict(zip(op.wires, item.tokens, strict=True))
@@ -479,7 +479,7 @@ class Trip:
             item.holders,
             [local[w] for w in op.enters],
             [local[w] for w in op.leaves],
-            int(cost),
+            cost,
         )
         self.high = (self.high | set(event.enters)) - set(event.leaves)
         self._note(event)
@@ -515,7 +515,7 @@ class Trip:
 
     def _swaps_near(self, pair: Pair, high: frozenset[int]) -> list[Pair]:
         """Return the swaps that move one of two tokens, as level 2 allows."""
-        found = []
+        found: list[Pair] = []
         for link in self.map.links:
             ends = (link.a, link.b)
             able = link.level2_error is not None and all(
