@@ -150,7 +150,7 @@ EDITS: dict[str, tuple[str, Callable[[Data], object], str]] = {
         other_device("capabilities:", "out_of_order: [6]\ncapabilities:"),
         "site 6 is out of order",
     ),
-    "recipe-unknown": (CLEAN, called(4, "recipe", "toffoli"), "mcx, 4 controls"),
+    "recipe-unknown": (CLEAN, called(4, "recipe", "toffoli"), "'toffoli' is no recipe"),
     "workspace-misstated": (CLEAN, called(4, "workspace", "none"), "uses 'clean'"),
     "lease-wrong": (CLEAN, called(6, "leases", 0, "end", 9), "clean-ladder"),
     "lost-misstated": (CLEAN, called(4, "lost", []), "none-gray"),
