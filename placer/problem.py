@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Literal
 
 from placer.errors import InputError, NoPlan, Place
-from placer.recipes import catalog, standard
+from placer.recipes import library, standard
 from placer.recipes.circuit import Built, Circuit, Op
 
 if TYPE_CHECKING:
@@ -99,11 +99,7 @@ def every_recipe(op: Operation) -> tuple[Built, ...]:
     """Return every recipe that exists for a step, whatever the device."""
     if not op.is_call:
         return (as_written(op),)
-    angle = op.params[0] if op.params else 0.0
-    names = catalog.recipe_names(op.kind, op.controls, op.inverse)
-    return tuple(
-        catalog.build(name, op.kind, op.controls, angle, op.inverse) for name in names
-    )
+    return tuple(library.build_for(name, op) for name in library.names_for(op))
 
 
 def why_not(
@@ -144,9 +140,7 @@ def _kinds(built: Built) -> str:
 
 
 def _allowed(built: Built, only: Sequence[str]) -> bool:
-    # With two controls and no slot there is no workspace to choose.
-    plain = built.workspace == "none" and built.controls == 2
-    return plain or built.workspace in only
+    return library.is_plain(built) or built.workspace in only
 
 
 def _wires_always_held(program: Program) -> int:
@@ -165,10 +159,7 @@ def _choices(
     left = tuple(b for b in candidates if reasons[b.recipe] is None)
     if not left:
         detail = "; ".join(f"{name}: {reason}" for name, reason in reasons.items())
-        raise NoPlan(
-            f"{op.place}: the call '{op.name}' with {op.controls} controls has no "
-            f"recipe left ({detail})"
-        )
+        raise NoPlan(f"{op.place}: the call '{op.title}' has no recipe left ({detail})")
     return left
 
 

@@ -16,7 +16,7 @@ from placer.device.read import read_device
 from placer.errors import InputError
 from placer.problem import as_written
 from placer.program.read import read_program
-from placer.recipes import catalog
+from placer.recipes import catalog, library
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -232,14 +232,17 @@ def _read_call(case: Case, op: Operation, row: Row, build: Build) -> Planned | N
         if row[key] != found:
             text = f"{key} {row[key]!r} is stated, the program says {found!r}"
             case.find("step-misstated", label, text)
-    names = catalog.recipe_names(op.kind, op.controls, op.inverse)
+    names = library.names_for(op)
     if row["recipe"] not in names:
-        text = f"'{row['recipe']}' is no recipe of {op.kind}, {op.controls} controls"
+        text = f"'{row['recipe']}' is no recipe of '{op.title}'"
         case.find("recipe-unknown", label, text)
         return None
     _check_lost(case, label, row, names)
-    angle = op.params[0] if op.params else 0.0
-    built = build(row["recipe"], op.kind, op.controls, angle, op.inverse)
+    if op.signature is None:
+        angle = op.params[0] if op.params else 0.0
+        built = build(row["recipe"], op.kind, op.controls, angle, op.inverse)
+    else:
+        built = library.build_for(row["recipe"], op)
     if row["workspace"] != built.workspace:
         text = f"'{row['workspace']}' is stated, '{built.recipe}' uses "
         case.find("workspace-misstated", label, text + f"'{built.workspace}'")

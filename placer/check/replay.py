@@ -16,10 +16,13 @@ import random
 from typing import TYPE_CHECKING
 
 from placer.check.plain import one_qubit
+from placer.program.signature import apply, digits, numbers, promised, value_widths
 
 if TYPE_CHECKING:
     from placer.check.case import Case, Planned
     from placer.program.model import Operation
+    from placer.program.signature import Signature
+    from placer.recipes.circuit import Built
 
 SAMPLES = 1024
 ALL_ON = (1 << SAMPLES) - 1
@@ -138,7 +141,7 @@ class _Replay:
                 text = f"site {lease.site} is leased as clean and is not in |0>"
                 self.find("slot-not-clean", f"{step.label}, slot {lease.slot}", text)
         got = [sites[p] for p in step.where[: len(step.op.wires)]]
-        if step.op.is_call:
+        if step.op.is_call and is_made_of_bits(step.built):
             self._coarse(step)
         else:
             bits = list(got)
@@ -200,6 +203,15 @@ class _Replay:
                 bits[op.bit or 0] = sites[where[0]]
 
 
+def is_made_of_bits(built: Built) -> bool:
+    """Whether a coarse circuit toggles bits, apart from frames of h.
+
+    Arithmetic in the Fourier basis does not; `circuits` follows it exactly.
+    """
+    names = {op.name for op in built.coarse.ops}
+    return not ("h" in names and names & {"p", "cp", "mcp"})
+
+
 def _is_unknown(case: Case, wire: int) -> bool:
     register = case.program.register_at(wire)
     return register.start == "unknown" and not register.workspace
@@ -211,7 +223,9 @@ def _writers(operations: tuple[Operation, ...] | list[Operation]) -> dict[str, i
 
 def meaning(op: Operation, bits: Bits, seed: int) -> None:
     """Do a step as the program means it, on the bits of its wires."""
-    if op.kind in ("mcx", "and"):
+    if op.signature is not None:
+        _arithmetic(op.signature, bits)
+    elif op.kind in ("mcx", "and"):
         toggle = ALL_ON
         for value in bits[:-1]:
             toggle &= value
@@ -220,6 +234,23 @@ def meaning(op: Operation, bits: Bits, seed: int) -> None:
         bits[:] = [0] * len(bits)
     elif op.kind == "gate":
         _gate(op, bits, seed)
+
+
+def _arithmetic(signature: Signature, bits: Bits) -> None:
+    """Do arithmetic on the numbers of each sample, by the definition of its kind."""
+    widths = value_widths(signature)
+    rows = [format(value, f"0{SAMPLES}b")[::-1] for value in bits]
+    results = [0] * len(bits)
+    known: dict[tuple[int, ...], list[int]] = {}
+    for sample in range(SAMPLES):
+        held = tuple(int(row[sample]) for row in rows)
+        if held not in known:
+            values = numbers(held, widths)
+            good = promised(signature, values)
+            known[held] = digits(apply(signature, values), widths) if good else [*held]
+        for place, bit in enumerate(known[held]):
+            results[place] |= bit << sample
+    bits[:] = results
 
 
 def _gate(op: Operation, bits: Bits, seed: int) -> None:

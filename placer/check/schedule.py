@@ -34,7 +34,8 @@ def _check_excluded(case: Case) -> None:
         built = step.built
         if not only or not step.op.is_call or built.workspace in only:
             continue
-        if built.workspace == "none" and step.op.controls == 2:
+        is_small = step.op.signature is None and step.op.controls == 2
+        if built.workspace == "none" and is_small:
             continue
         text = f"'{built.recipe}' uses {built.workspace}, allowed: {', '.join(only)}"
         case.find("recipe-excluded", step.label, text)

@@ -36,7 +36,7 @@ def reasons(instance: Instance, placement: Placement) -> list[Reasons]:
         if not op.is_call:
             result.append(())
             continue
-        size = (op.kind, op.controls, op.params, op.inverse)
+        size = (op.kind, op.controls, op.params, op.inverse, op.signature)
         if size not in excluded:
             excluded[size] = tuple(
                 (built.recipe, reason)

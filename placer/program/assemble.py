@@ -75,6 +75,7 @@ def _operation(index: int, step: Step) -> Operation:
         step.scope,
         step.part,
         step.annotations,
+        step.signature,
     )
 
 

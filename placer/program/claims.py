@@ -18,6 +18,14 @@ from numpy.typing import NDArray
 
 from placer.errors import Fault, InputError
 from placer.program.model import Operation, Program
+from placer.program.signature import (
+    Signature,
+    apply,
+    digits,
+    numbers,
+    promised,
+    value_widths,
+)
 
 Words = NDArray[np.uint64]
 
@@ -54,7 +62,8 @@ BRANCHING = frozenset(["h", "sx", "sxdg", "rx", "ry", "u", "ch", "crx", "cry", "
 def check_claims(program: Program) -> None:
     """Refuse a program whose workspace does not end in |0>.
 
-    Also refuses an `and` whose target is not 0, or is not taken back to 0.
+    Also refuses an `and` whose target is not 0, or is not taken back to 0, and
+    arithmetic whose promises are broken.
 
     Raises
     ------
@@ -67,8 +76,8 @@ def check_claims(program: Program) -> None:
         if register.workspace
         for wire in range(register.first, register.first + register.width)
     ]
-    has_products = any(op.kind == "and" for op in program.operations)
-    if not claimed and not has_products:
+    has_promises = any(op.kind in ("and", "sum", "lookup") for op in program.operations)
+    if not claimed and not has_promises:
         return
     replay = _Replay(program, frozenset(claimed))
     for operation in program.operations:
@@ -143,6 +152,8 @@ class _Replay:
             bits[first], bits[second] = bits[second], bits[first]
         elif name == "and":
             self._product(operation)
+        elif operation.signature is not None:
+            self._arithmetic(operation, operation.signature)
         else:
             target = wires[-1]
             bits[target] = bits[target] ^ self._all_ones(wires[:-1])
@@ -213,6 +224,39 @@ class _Replay:
                 )
             )
         self.bits[target] = np.zeros_like(before) if operation.inverse else product
+
+    def _arithmetic(self, operation: Operation, signature: Signature) -> None:
+        """Do arithmetic on the numbers of all samples; refuse a broken promise."""
+        wires = operation.wires
+        columns = [
+            np.unpackbits(self.bits[w].view(np.uint8), bitorder="little") for w in wires
+        ]
+        widths = value_widths(signature)
+        results = [np.zeros_like(column) for column in columns]
+        broken = np.zeros(SAMPLES, dtype=np.uint8)
+        for sample in range(SAMPLES):
+            values = numbers([int(column[sample]) for column in columns], widths)
+            if not promised(signature, values):
+                broken[sample] = 1
+                continue
+            for place, bit in enumerate(digits(apply(signature, values), widths)):
+                results[place][sample] = bit
+        if broken.any() and len(self.faults) < MOST_FAULTS:
+            wrong = np.packbits(broken, bitorder="little").view(np.uint64)
+            what = {
+                "sum": "the register for the sum is not in |0>",
+                "lookup": "the address lies beyond the table",
+            }.get(operation.kind, "a promise is broken")
+            self.faults.append(
+                Fault(
+                    operation.place,
+                    "broken-promise",
+                    f"'{operation.kind}': {what}{self._example(wrong)}",
+                    "give it what its kind expects",
+                )
+            )
+        for wire, result in zip(wires, results, strict=True):
+            self.bits[wire] = np.packbits(result, bitorder="little").view(np.uint64)
 
     def end(self, wire: int) -> None:
         """Report a claimed wire that does not end in 0."""

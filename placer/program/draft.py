@@ -7,6 +7,7 @@ from typing import Literal, NamedTuple
 
 from placer.errors import Place
 from placer.program.model import OperationKind, Start
+from placer.program.signature import Signature
 
 Part = Literal["", "compute", "body", "cleanup"]
 
@@ -28,6 +29,7 @@ class Step(NamedTuple):
     part: Part = ""
     annotations: tuple[str, ...] = ()
     is_frame: bool = False
+    signature: Signature | None = None
 
 
 @dataclass(slots=True)

@@ -13,6 +13,7 @@ from types import MappingProxyType
 from typing import Literal, NewType
 
 from placer.errors import Place
+from placer.program.signature import ARITHMETIC_KINDS, Signature
 
 WireId = NewType("WireId", int)
 
@@ -21,9 +22,27 @@ NOWHERE = Place("")
 
 Start = Literal["zero", "unknown"]
 OperationKind = Literal[
-    "gate", "mcx", "mcz", "mcp", "and", "measure", "reset", "barrier"
+    "gate",
+    "mcx",
+    "mcz",
+    "mcp",
+    "and",
+    "add",
+    "subtract",
+    "sum",
+    "add_constant",
+    "less_than",
+    "equal",
+    "increment",
+    "decrement",
+    "lookup",
+    "multiply_add",
+    "measure",
+    "reset",
+    "barrier",
 ]
-CALL_KINDS: tuple[str, ...] = ("mcx", "mcz", "mcp", "and")
+CONTROLLED_KINDS: tuple[str, ...] = ("mcx", "mcz", "mcp", "and")
+CALL_KINDS: tuple[str, ...] = (*CONTROLLED_KINDS, *ARITHMETIC_KINDS)
 
 # Plain gates that an operation of kind "gate" may name: wires, parameters.
 # Angles are radians in the OpenQASM 3 convention (stdgates.inc); u(theta, phi, lambda).
@@ -89,6 +108,8 @@ class Operation:
     Calls (`mcx`, `mcz`, `mcp`, `and`) have their controls first and the target last in
     `wires`; there are at least two controls.  `and` computes the product into a target
     in |0>, and with `inverse` takes it away again.  `mcp` has its angle in `params`.
+    Arithmetic calls have a `signature`, which says what their wires mean and whether
+    they are inverted.
     A gate has its name from PLAIN_GATES.  `bit` is the classical bit of a measurement,
     as written in the source (`c[3]`).  `scope` is the number of the innermost scope,
     -1 outside of all.  `part` says which part of that scope the step belongs to.
@@ -105,6 +126,7 @@ class Operation:
     scope: int = -1
     part: Literal["", "compute", "body", "cleanup"] = ""
     annotations: tuple[str, ...] = ()
+    signature: Signature | None = None
 
     @property
     def is_call(self) -> bool:
@@ -114,7 +136,19 @@ class Operation:
     @property
     def controls(self) -> int:
         """Number of controls of a call."""
+        if self.signature is not None:
+            return self.signature.controls
         return len(self.wires) - 1
+
+    @property
+    def title(self) -> str:
+        """The call in a few words, such as `mcx with 5 controls` or `add (8, 8)`."""
+        if self.signature is None:
+            return f"{self.kind} with {self.controls} controls"
+        widths = ", ".join(str(width) for width in self.signature.widths)
+        inverse = " inverted" if self.signature.inverse else ""
+        more = f" with {self.controls} controls" if self.controls else ""
+        return f"{self.kind} ({widths}){inverse}{more}"
 
 
 @dataclass(frozen=True, slots=True)

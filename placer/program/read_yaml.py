@@ -13,6 +13,7 @@ from placer.program.assemble import assemble
 from placer.program.claims import check_claims
 from placer.program.draft import Draft
 from placer.program.model import Program, Start
+from placer.program.yaml_arithmetic import READERS as ARITHMETIC
 from placer.program.yaml_block import repeat, scope
 from placer.program.yaml_call import mcp, mcx, mcz, product
 from placer.program.yaml_operand import NAME, RESERVED
@@ -32,6 +33,7 @@ _READERS: dict[str, Callable[[Steps, Node], None]] = {
     "barrier": barrier,
     "repeat": repeat,
     "scope": scope,
+    **ARITHMETIC,
 }
 _REGISTER_KEYS = ("width", "start", "lendable", "workspace")
 

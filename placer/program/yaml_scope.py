@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import replace
 
 from placer.errors import Fault
 from placer.program.claims import DIAGONAL
 from placer.program.draft import Draft, DraftScope, Part, Step
+from placer.program.signature import changed
 from placer.program.terms import inverse_base
 
 _SWAPPED: dict[Part, Part] = {
@@ -20,6 +22,9 @@ _UNCHANGED = frozenset({"cx", "cy", "cz", "ch", "mcx", "mcz", "barrier"})
 
 def inverse_step(step: Step) -> Step:
     """Return the step that undoes a step, which must be no measurement or reset."""
+    if step.signature is not None:
+        turned = replace(step.signature, inverse=not step.signature.inverse)
+        return step._replace(signature=turned)
     if step.kind == "and":
         return step._replace(inverse=not step.inverse)
     if step.kind == "gate" and step.name not in _UNCHANGED:
@@ -34,6 +39,8 @@ def written(step: Step) -> tuple[int, ...]:
     """Return the wires whose basis value a step may change."""
     if step.is_frame:
         return ()
+    if step.signature is not None:
+        return tuple(step.wires[w] for w in changed(step.signature))
     name = step.name if step.kind == "gate" else step.kind
     # A measurement ends the superposition that a cleanup would need.
     if name == "measure":

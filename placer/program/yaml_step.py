@@ -12,6 +12,7 @@ from dataclasses import dataclass, field, replace
 from placer.errors import Fault, InputError, Place, did_you_mean
 from placer.program.draft import Draft, Part, Step
 from placer.program.model import PLAIN_GATES, OperationKind
+from placer.program.signature import Signature
 from placer.program.yaml_operand import Operand, angle, operands
 from placer.yamlnode import Node, raise_if_any
 
@@ -104,6 +105,7 @@ class Steps:
         params: tuple[float, ...] = (),
         bit: str | None = None,
         is_frame: bool = False,
+        signature: Signature | None = None,
     ) -> None:
         """Add an operation, which must act on different wires."""
         if len(set(wires)) < len(wires):
@@ -127,6 +129,7 @@ class Steps:
                 scope=scope,
                 part=part,
                 is_frame=is_frame,
+                signature=signature,
             )
         )
 

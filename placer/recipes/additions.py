@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from functools import partial
 
+from placer.program.signature import Signature
 from placer.recipes import makers
-from placer.recipes.signature import Signature
 from placer.recipes.way import (
     CONTROLLED,
     CUCCARO,

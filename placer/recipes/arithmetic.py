@@ -12,13 +12,13 @@ from collections.abc import Sequence
 from dataclasses import replace
 from functools import lru_cache
 
+from placer.program.signature import Signature, layout, problems
 from placer.recipes import catalog
 from placer.recipes.ands import Cleaner
 from placer.recipes.circuit import Built, Circuit, Op, Recipe
 from placer.recipes.constants import bit
 from placer.recipes.draft import Draft, Made, both, join, same, tidy
 from placer.recipes.makers import turned
-from placer.recipes.signature import Signature, layout, problems
 from placer.recipes.toffoli import temporary_and
 from placer.recipes.way import Way
 from placer.recipes.ways import WAYS, swap_way, taken_way

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 
+from placer.program.signature import Layout, Signature, layout
 from placer.recipes import (
     ands,
     constants,
@@ -23,7 +24,6 @@ from placer.recipes.ands import Cleaner
 from placer.recipes.circuit import SlotKind
 from placer.recipes.draft import Draft, Made, both, same
 from placer.recipes.makers import control_of, directed, fresh_wires, turned
-from placer.recipes.signature import Layout, Signature, layout
 
 
 # ------------------------------------------------------------------ comparators

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 
+from placer.program.signature import Layout, Signature, layout
 from placer.recipes import (
     ands,
     constants,
@@ -20,7 +21,6 @@ from placer.recipes import (
 )
 from placer.recipes.ands import Cleaner
 from placer.recipes.draft import Draft, Made, both, join, same
-from placer.recipes.signature import Layout, Signature, layout
 from placer.recipes.toffoli import temporary_and
 
 Maker = Callable[[Signature], Made]

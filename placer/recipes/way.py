@@ -9,9 +9,9 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass, replace
 
+from placer.program.signature import Signature
 from placer.recipes.circuit import Recipe, Workspace
 from placer.recipes.makers import Maker
-from placer.recipes.signature import Signature
 
 CUCCARO = "Cuccaro et al. 2004, quant-ph/0410184"
 TAKAHASHI = "Takahashi, Tani and Kunihiro 2009, arXiv 0910.2530"

@@ -9,10 +9,10 @@ from __future__ import annotations
 
 from functools import partial
 
+from placer.program.signature import Signature
 from placer.recipes import further_makers
 from placer.recipes.additions import ADDITIONS
 from placer.recipes.circuit import Workspace
-from placer.recipes.signature import Signature
 from placer.recipes.way import (
     CONTROLLED,
     CUCCARO,

@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, Any, Literal
 from placer.errors import InputError, Place
 from placer.plan import Plan, to_json
 from placer.problem import as_written
-from placer.recipes import catalog
+from placer.recipes import library
 from placer.report.qasmgates import DEFINITIONS, call_gate, free_name, gate_text
 
 if TYPE_CHECKING:
@@ -115,8 +115,7 @@ def placed_steps(data: Mapping[str, Any], program: Program) -> tuple[PlacedStep,
 def _step(op: Operation, start: int, call: Mapping[str, Any] | None) -> PlacedStep:
     if call is None or not op.is_call:
         return PlacedStep(op, as_written(op), start, ())
-    angle = op.params[0] if op.params else 0.0
-    built = catalog.build(call["recipe"], op.kind, op.controls, angle, op.inverse)
+    built = library.build_for(call["recipe"], op)
     leases = tuple(
         PlacedLease(x["slot"], x["site"], x["kind"] == "clean", x["lender"])
         for x in sorted(call["leases"], key=lambda x: int(x["slot"]))
@@ -176,14 +175,16 @@ def _write_step(
     op = step.operation
     here = [_site_of(program, sites, wire) for wire in op.wires]
     kept = [_annotation(a) for a in op.annotations if "placer." not in a[:8]]
-    if op.is_call and step.built.level2_wires:
+    if op.is_call and op.signature is None and step.built.level2_wires:
         _title(writer, step)
         chosen = ",".join(f"${here[w]}" for w in step.built.level2_wires)
         writer.lines += [*kept, f"@placer.level2 sites={chosen}"]
         writer.lines.append(call_gate(op, here))
         return
     slots = {lease.slot: lease.site for lease in step.leases}
-    circuit = step.built.fine if is_fine else step.built.coarse
+    # Gates on level 2 have no spelling in the standard: they stay whole.
+    is_whole = bool(step.built.level2_wires)
+    circuit = step.built.fine if is_fine and not is_whole else step.built.coarse
     try:
         here += [slots[n] for n in range(len(circuit.slots))]
     except KeyError as error:
@@ -196,6 +197,9 @@ def _write_step(
     if op.is_call:
         _title(writer, step)
     lenders = [lease.lender for lease in step.leases if lease.lender is not None]
+    if is_whole:
+        chosen = ",".join(f"${here[w]}" for w in step.built.level2_wires)
+        kept.append(f"@placer.level2 sites={chosen}")
     first = [*kept, *(f"@placer.borrow lender={name}" for name in lenders)]
     last = [f"@placer.return lender={name}" for name in lenders]
     writer.lines += [*first, *statements[:-1], *last, statements[-1]]
@@ -206,7 +210,7 @@ def _title(writer: _Writer, step: PlacedStep) -> None:
     where = f", line {op.place.line}" if op.place.line else ""
     inverse = " inverse" if op.inverse else ""
     writer.lines.append(
-        f"// call {op.index}: {op.kind}{inverse} with {op.controls} controls, "
+        f"// call {op.index}: {op.kind}{inverse}{op.title.removeprefix(op.kind)}, "
         f"recipe {step.built.recipe}{where}"
     )
 

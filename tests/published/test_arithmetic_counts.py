@@ -14,13 +14,13 @@ from dataclasses import replace
 
 import pytest
 
+from placer.program.signature import Signature
 from placer.recipes.ands import Cleaner
 from placer.recipes.arithmetic import build
 from placer.recipes.circuit import Op
 from placer.recipes.counts import Counts, count, depth
 from placer.recipes.draft import tidy
 from placer.recipes.lookups import select_swap_compute
-from placer.recipes.signature import Signature
 
 SIZES = (4, 8, 16, 32)
 Formula = Callable[[int], int]

@@ -7,15 +7,15 @@ from collections.abc import Iterable, Iterator
 import numpy as np
 from arithmetic_simulators import Sparse
 
-from placer.recipes.arithmetic import recipe_names
-from placer.recipes.circuit import Built
-from placer.recipes.signature import (
+from placer.program.signature import (
     Signature,
     Values,
     apply,
     promised,
     value_widths,
 )
+from placer.recipes.arithmetic import recipe_names
+from placer.recipes.circuit import Built
 
 Case = tuple[str, Signature]
 

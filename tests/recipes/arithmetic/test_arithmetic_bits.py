@@ -25,9 +25,9 @@ from arithmetic_simulators import (
     slices,
 )
 
+from placer.program.signature import Signature, apply
 from placer.recipes.arithmetic import build, recipe_names
 from placer.recipes.circuit import Built
-from placer.recipes.signature import Signature, apply
 
 
 def is_bitwise(built: Built) -> bool:

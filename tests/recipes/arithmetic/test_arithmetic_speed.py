@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 from arithmetic_simulators import replay
 
+from placer.program.signature import Signature
 from placer.recipes.arithmetic import build
-from placer.recipes.signature import Signature
 
 INPUTS = 100_032
 """A whole number of machine words, at least 10^5."""

@@ -25,9 +25,9 @@ from arithmetic_cases import (
 )
 from arithmetic_simulators import follow, mismatch
 
+from placer.program.signature import Signature
 from placer.recipes.arithmetic import build, recipe_names
 from placer.recipes.circuit import Built, Circuit
-from placer.recipes.signature import Signature
 
 MOST_OUTCOMES = 4
 """Beyond so many measurements, outcomes are drawn at random."""

@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 from arithmetic_cases import bits_of, every_operand, expected
 
+from placer.program.signature import Signature
 from placer.recipes.arithmetic import build, recipe_names
 from placer.recipes.circuit import Op
-from placer.recipes.signature import Signature
 
 CALLS = [
     Signature("equal", (2, 2)),

@@ -8,10 +8,8 @@ import itertools
 import pytest
 from arithmetic_cases import cases, signatures, split
 
-from placer.recipes import arithmetic, catalog, signature
-from placer.recipes.arithmetic import build, describe, recipe_names
-from placer.recipes.circuit import Built
-from placer.recipes.signature import (
+from placer.program import signature
+from placer.program.signature import (
     ARITHMETIC_KINDS,
     Signature,
     apply,
@@ -19,6 +17,9 @@ from placer.recipes.signature import (
     problems,
     promised,
 )
+from placer.recipes import arithmetic, catalog
+from placer.recipes.arithmetic import build, describe, recipe_names
+from placer.recipes.circuit import Built
 from placer.recipes.ways import WAYS
 
 

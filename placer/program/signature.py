@@ -7,6 +7,7 @@ call is built is not known here.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 Values = tuple[int, ...]
@@ -131,6 +132,14 @@ def layout(signature: Signature) -> Layout:
     return Layout(controls, tuple(registers), result, signature.operands)
 
 
+def changed(signature: Signature) -> tuple[int, ...]:
+    """Return the operand wires that a call may change; the others it only reads."""
+    wires = layout(signature)
+    if signature.kind in _WITH_RESULT:
+        return () if wires.result is None else (wires.result,)
+    return wires.target
+
+
 def value_widths(signature: Signature) -> tuple[int, ...]:
     """Return the width of each integer in `Values`."""
     result = (1,) if signature.has_result else ()
@@ -199,6 +208,25 @@ def _table_problems(signature: Signature) -> list[str]:
 
 
 # ------------------------------------------------------------------ meaning
+def numbers(bits: Sequence[int], widths: Sequence[int]) -> Values:
+    """Return the integers that little-endian bits hold."""
+    values = []
+    at = 0
+    for width in widths:
+        values.append(sum(bits[at + i] << i for i in range(width)))
+        at += width
+    return tuple(values)
+
+
+def digits(values: Sequence[int], widths: Sequence[int]) -> list[int]:
+    """Return the bits of integers, little-endian, one after the other."""
+    return [
+        value >> place & 1
+        for value, width in zip(values, widths, strict=True)
+        for place in range(width)
+    ]
+
+
 def promised(signature: Signature, values: Values) -> bool:
     """Whether the values keep the promises of the kind (always, for most kinds)."""
     registers = values[signature.controls :]
