@@ -79,7 +79,7 @@ def check_claims(program: Program) -> None:
     has_promises = any(op.kind in ("and", "sum", "lookup") for op in program.operations)
     if not claimed and not has_promises:
         return
-    replay = _Replay(program, frozenset(claimed))
+    replay = Replay(program, frozenset(claimed))
     for operation in program.operations:
         replay.run(operation)
     for wire in claimed:
@@ -91,7 +91,7 @@ def check_claims(program: Program) -> None:
 
 
 @dataclass(slots=True)
-class _Replay:
+class Replay:
     """The bits of all wires over all samples, and what was found wrong."""
 
     program: Program
@@ -106,6 +106,7 @@ class _Replay:
     )
 
     def __post_init__(self) -> None:
+        """Give every wire that starts unknown its inputs."""
         used = sorted({wire for op in self.program.operations for wire in op.wires})
         free = [
             wire for wire in used if self.program.register_at(wire).start == "unknown"

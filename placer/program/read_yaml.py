@@ -18,11 +18,12 @@ from placer.program.yaml_block import repeat, scope
 from placer.program.yaml_call import mcp, mcx, mcz, product
 from placer.program.yaml_operand import NAME, RESERVED
 from placer.program.yaml_readout import barrier, measure, reset
+from placer.program.yaml_routine import Routines, call, read_routines
 from placer.program.yaml_step import WIDEST, Steps, TooMany
 from placer.yamlnode import Faults, Node
 from placer.yamltext import parse
 
-_KEYS = ("name", "note", "registers", "bits", "steps")
+_KEYS = ("name", "note", "registers", "bits", "routines", "steps")
 _READERS: dict[str, Callable[[Steps, Node], None]] = {
     "mcx": mcx,
     "mcz": mcz,
@@ -34,6 +35,7 @@ _READERS: dict[str, Callable[[Steps, Node], None]] = {
     "repeat": repeat,
     "scope": scope,
     **ARITHMETIC,
+    "call": call,
 }
 _REGISTER_KEYS = ("width", "start", "lendable", "workspace")
 
@@ -62,6 +64,9 @@ def read_yaml(text: str, path: str, *, open_inputs: bool = False) -> Program:
     bits = _bits(entries.get("bits"), draft, faults)
     steps = Steps(draft, names, bits, faults, _READERS)
     steps.owners.update(owners)
+    steps.routines = Routines()
+    if "routines" in entries:
+        read_routines(entries["routines"], faults, _READERS, path, steps.routines)
     _check_names(entries, faults)
     if "steps" in entries:
         try:

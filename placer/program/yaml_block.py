@@ -46,9 +46,9 @@ def scope(steps: Steps, node: Node) -> None:
     before = dict(steps.names)
     try:
         if "workspace" in entries:
-            _workspace(steps, entries["workspace"], number)
-        compute = _part(steps, number, "compute", entries.get("compute"))
-        body = _part(steps, number, "body", entries.get("body"))
+            add_workspace(steps, entries["workspace"], number)
+        compute = read_part(steps, number, "compute", entries.get("compute"))
+        body = read_part(steps, number, "body", entries.get("body"))
     finally:
         steps.names = before
     steps.faults.extend(body_faults(compute, body, lambda: wire_names(steps.draft)))
@@ -73,7 +73,7 @@ def _scope_name(steps: Steps, node: Node | None) -> str:
     return name or ""
 
 
-def _part(steps: Steps, number: int, part: Part, node: Node | None) -> list[Step]:
+def read_part(steps: Steps, number: int, part: Part, node: Node | None) -> list[Step]:
     """Read one part of a scope into a list of its own."""
     if node is None:
         return []
@@ -88,7 +88,7 @@ def _part(steps: Steps, number: int, part: Part, node: Node | None) -> list[Step
         steps.out = saved
 
 
-def _workspace(steps: Steps, node: Node, number: int) -> None:
+def add_workspace(steps: Steps, node: Node, number: int) -> None:
     """Declare the workspace of a scope, under names that are free outside."""
     for name, value in (node.mapping(steps.faults) or {}).items():
         width = value.whole(steps.faults, low=1, high=WIDEST)

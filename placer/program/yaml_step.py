@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from typing import Any
 
 from placer.errors import Fault, InputError, Place, did_you_mean
 from placer.program.draft import Draft, Part, Step
@@ -32,7 +33,7 @@ class Steps:
     `names` are the registers in sight, `open` the scopes and parts around the step,
     `out` the list that steps are added to, `readers` what reads a step by its key.
     `owners` gives the scope of each workspace wire (-1: the file), `workspace_of` the
-    registers of each scope.
+    registers of each scope; `routines` what `yaml_routine` knows.
     """
 
     draft: Draft
@@ -45,6 +46,7 @@ class Steps:
     owners: dict[int, int] = field(default_factory=dict)
     workspace_of: dict[int, list[int]] = field(default_factory=dict)
     count: int = 0
+    routines: Any = None
 
     def read(self, node: Node) -> None:
         """Read a list of steps."""
