@@ -280,14 +280,45 @@ def check(plan_file: str, *, as_json: bool) -> None:
     is_flag=True,
     help="Take every wire that is not declared scratch as unknown at the start.",
 )
+@click.option(
+    "--recipes",
+    is_flag=True,
+    help="FILE is a kind of call (mcx, add, ...): list its recipes.",
+)
+@click.option(
+    "--size",
+    type=click.IntRange(min=2),
+    default=8,
+    show_default=True,
+    metavar="N",
+    help="With --recipes: number of controls, or width of the registers.",
+)
+@click.option(
+    "-d",
+    "--device",
+    "device_name",
+    help="With --recipes: add time and least error on this device.",
+)
 @_json
-def show(name: str, *, open_inputs: bool, as_json: bool) -> None:
-    """Show what a device or a program contains.
+def show(
+    name: str,
+    *,
+    open_inputs: bool,
+    recipes: bool,
+    size: int,
+    device_name: str | None,
+    as_json: bool,
+) -> None:
+    """Show what a device or a program contains, or which recipes a call has.
 
-    FILE is a device or program file, or the name of a shipped device or demo program.
+    FILE is a device or program file, or the name of a shipped device or demo program;
+    with --recipes it is a kind of call.
     """
     from placer.report import show as shown
 
+    if recipes:
+        _show_recipes(name, size, device_name, as_json=as_json)
+        return
     is_device = sort_of(name) == "device"
     if is_device:
         device = _load_device(name)
@@ -301,6 +332,19 @@ def show(name: str, *, open_inputs: bool, as_json: bool) -> None:
         _print_json(shown.program_data(program))
     else:
         click.echo(shown.program_text(program, **_look(sys.stdout)), nl=False)
+
+
+def _show_recipes(
+    kind: str, size: int, device_name: str | None, *, as_json: bool
+) -> None:
+    from placer.report.recipes import recipe_rows, recipes_text
+
+    device = None if device_name is None else _load_device(device_name)
+    if as_json:
+        _print_json({"kind": kind, "recipes": recipe_rows(kind, size, device)})
+    else:
+        text = recipes_text(kind, size, device, **_look(sys.stdout))
+        click.echo(text, nl=False)
 
 
 @main.command()
