@@ -110,6 +110,7 @@ def recipe_rows(kind: str, size: int, device: Device | None) -> list[dict[str, A
             "depth": sizes.depth,
             "two_qubit_depth": sizes.two_qubit_depth,
             "source": recipe.source,
+            "kept_for": library.kept_for(name),
         }
         if device is not None and tables is not None:
             row |= _on_device(built, device, tables)
@@ -164,7 +165,9 @@ def recipes_text(
     page.table(columns, [_cells(row, device is not None) for row in rows])
     page.heading("Where they come from")
     for row in rows:
-        page.paragraph(f"{row['recipe']}: {row['title']}; {row['source']}", 1)
+        reason = f" ({row['kept_for']})" if row["kept_for"] else ""
+        text = f"{row['recipe']}: {row['title']}{reason}; {row['source']}"
+        page.paragraph(text, 1)
     if device is not None:
         page.line()
         page.paragraph(

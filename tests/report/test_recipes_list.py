@@ -53,3 +53,23 @@ def test_the_command_lists_for_machines_and_refuses_nonsense() -> None:
         bad = run.invoke(main, [*words, "--size", "40"])
         assert bad.exit_code == 2
         assert "error[" in bad.stderr
+
+
+def is_beaten(row: dict[str, object], other: dict[str, object]) -> bool:
+    needs = ("clean", "borrowed", "measures", "level2_wires")
+    same = all(row[key] == other[key] for key in needs)
+    return same and all(other[key] < row[key] for key in ("two_body", "depth"))
+
+
+def test_a_recipe_that_another_beats_says_why_it_stays() -> None:
+    beaten = set()
+    for kind in CALL_KINDS:
+        for size in (2, 3, 4, 5, 6, 8, 12, 16):
+            if kind in ("lookup", "multiply_add") and size > 4:
+                continue
+            rows = recipe_rows(kind, size, None)
+            for row in rows:
+                if any(is_beaten(row, other) for other in rows):
+                    assert row["kept_for"], (kind, size, row["recipe"])
+                    beaten.add(row["recipe"].removeprefix("equal-"))
+    assert beaten == set(library.KEPT_FOR)
