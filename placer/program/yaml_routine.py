@@ -8,8 +8,8 @@ verified claim becomes one call of that kind, for which recipes may be chosen.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass, field
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -31,7 +31,7 @@ from placer.program.yaml_operand import NAME, RESERVED
 from placer.program.yaml_step import WIDEST, Steps
 from placer.yamlnode import Node
 
-_KEYS = ("arguments", "scratch", "steps", "computes")
+_KEYS = ("arguments", "scratch", "borrowed", "steps", "computes")
 # Gates that only move bits: what a claim about integers can be verified on.
 _PERMUTING = frozenset({"x", "cx", "swap"})
 
@@ -40,11 +40,16 @@ Readers = Mapping[str, Callable[[Steps, Node], None]]
 
 @dataclass(frozen=True, slots=True)
 class Routine:
-    """A routine: argument widths in order, scratch, steps, and what it computes."""
+    """A routine: argument widths in order, scratch, steps, and what it computes.
+
+    `borrowed` scratch may hold anything and comes back as it was: that is verified.
+    A call gives it fresh workspace in |0>, which always serves.
+    """
 
     name: str
     arguments: Mapping[str, int]
     scratch: Node | None
+    borrowed: Node | None
     steps: Node
     computes: Step | None
     place: Place
@@ -103,10 +108,25 @@ def _routine(
     steps = Steps(draft, names, {}, faults, readers)
     steps.routines = routines
     routine = Routine(
-        name, widths, entries.get("scratch"), entries["steps"], None, place
+        name,
+        widths,
+        entries.get("scratch"),
+        entries.get("borrowed"),
+        entries["steps"],
+        None,
+        place,
     )
     before = len(faults)
-    _body(steps, routine, names)
+    lent: list[int] = []
+    if routine.borrowed is not None:
+        for key, item in (routine.borrowed.mapping(faults) or {}).items():
+            width = item.whole(faults, low=1, high=WIDEST) or 1
+            where = routine.borrowed.key_place(key)
+            if key in names:
+                faults.append(Fault(where, "declared-twice", f"'{key}' is an argument"))
+            names[key] = draft.add_register(key, width, "unknown", where)
+            lent += names[key]
+    _body(steps, routine, names, is_alone=True)
     body = steps.out
     claim = _claim(steps, entries.get("computes"))
     if len(faults) > before:
@@ -114,9 +134,11 @@ def _routine(
     draft.steps = body
     program = assemble(draft, "yaml", "", path, name=name)
     check_claims(program)
+    if routine.borrowed is not None:
+        _verify_borrowed(program, lent, routine.borrowed)
     if claim is not None and claim.signature is not None:
         _verify(program, claim, claim.signature, name)
-    return Routine(name, widths, routine.scratch, routine.steps, claim, place)
+    return replace(routine, computes=claim)
 
 
 def _claim(steps: Steps, node: Node | None) -> Step | None:
@@ -141,6 +163,41 @@ def _claim(steps: Steps, node: Node | None) -> Step | None:
         )
         return None
     return found[0]
+
+
+def _verify_borrowed(program: Program, lent: Sequence[int], node: Node) -> None:
+    """Refuse borrowed scratch that does not come back, or that others depend on."""
+    first, second = Replay(program, frozenset()), Replay(program, frozenset())
+    for wire in lent:
+        second.bits[wire] = ~second.bits[wire]
+    for op in program.operations:
+        is_phase = op.kind in ("mcz", "mcp")
+        is_other = op.kind == "gate" and op.name not in _PERMUTING
+        if (is_phase or is_other) and set(op.wires) & {*lent}:
+            raise InputError.at(
+                op.place,
+                "borrowed-claim",
+                f"'{op.name}' acts on the borrowed {program.wire_names[op.wires[0]]}, "
+                "so that it cannot be verified that it comes back",
+                "use x, cx, swap, mcx and arithmetic on borrowed scratch",
+            )
+        first.run(op)
+        second.run(op)
+    for wire, name in enumerate(program.wire_names):
+        before = first.inputs.get(wire)
+        is_lent = wire in lent
+        if is_lent and before is not None and (first.bits[wire] != before).any():
+            what = f"the borrowed {name} does not come back as it was"
+        elif not is_lent and (first.bits[wire] != second.bits[wire]).any():
+            what = f"what {name} becomes depends on the borrowed scratch"
+        else:
+            continue
+        raise InputError.at(
+            node.place,
+            "borrowed-claim",
+            what,
+            "toggle it back, or declare it as clean scratch",
+        )
 
 
 def _verify(program: Program, claim: Step, signature: Signature, name: str) -> None:
@@ -264,8 +321,17 @@ def _one_call(
     steps.add(claim.kind, wires, node.place, signature=claim.signature)
 
 
-def _body(steps: Steps, routine: Routine, given: Mapping[str, tuple[int, ...]]) -> None:
-    """Read the steps of a routine, in a scope that owns its scratch."""
+def _body(
+    steps: Steps,
+    routine: Routine,
+    given: Mapping[str, tuple[int, ...]],
+    *,
+    is_alone: bool = False,
+) -> None:
+    """Read the steps of a routine, in a scope that owns its scratch.
+
+    Alone, borrowed scratch is among the wires given, and may hold anything.
+    """
     number = len(steps.draft.scopes)
     parent, part = steps.open[-1] if steps.open else (-1, "")
     name = routine.name
@@ -275,6 +341,8 @@ def _body(steps: Steps, routine: Routine, given: Mapping[str, tuple[int, ...]]) 
     try:
         if routine.scratch is not None:
             add_workspace(steps, routine.scratch, number)
+        if routine.borrowed is not None and not is_alone:
+            add_workspace(steps, routine.borrowed, number)
         steps.out.extend(read_part(steps, number, "body", routine.steps))
     finally:
         steps.names, steps.bits = saved, bits

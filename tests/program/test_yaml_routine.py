@@ -120,3 +120,40 @@ def test_a_routine_cannot_call_itself() -> None:
 def test_a_false_claim_shows_an_input() -> None:
     with pytest.raises(InputError, match=r"it makes \(\d, \d\) of \(\d, \d\)"):
         read("  - h: f\n", "      - cx: x, y\n", "")
+
+
+BORROWING = """routines:
+  four:
+    arguments: {a: 3, t: }
+    borrowed: {d: 1}
+    steps:
+      - mcx: {controls: [a.2, d.0], target: t}
+      - mcx: {controls: [a.0, a.1], target: d.0}
+      - mcx: {controls: [a.2, d.0], target: t}
+      - mcx: {controls: [a.0, a.1], target: d.0}
+registers: {q: 3, r: }
+steps:
+  - call: {routine: four, with: {a: q, t: r}}
+"""
+
+
+def test_borrowed_scratch_is_verified_and_given_fresh_workspace() -> None:
+    program = read_program(BORROWING, "borrowing.yaml")
+    assert kinds(program) == ["mcx"] * 4
+    assert [r.workspace for r in program.registers] == [False, False, True]
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "message"),
+    [
+        ("      - mcx: {controls: [a.0, a.1], target: d.0}\nreg", "reg", "come back"),
+        ("      - mcx: {controls: [a.2, d.0], target: t}\n", "", "depends on"),
+        ("registers", "      - h: d\nregisters", "cannot be verified"),
+    ],
+)
+def test_borrowed_scratch_that_is_not_given_back_is_refused(
+    old: str, new: str, message: str
+) -> None:
+    assert old in BORROWING
+    with pytest.raises(InputError, match=message):
+        read_program(BORROWING.replace(old, new, 1), "borrowing.yaml")
