@@ -158,8 +158,13 @@ def _choices(
     reasons = {b.recipe: why_not(b, device, program, only) for b in candidates}
     left = tuple(b for b in candidates if reasons[b.recipe] is None)
     if not left:
-        detail = "; ".join(f"{name}: {reason}" for name, reason in reasons.items())
-        raise NoPlan(f"{op.place}: the call '{op.title}' has no recipe left ({detail})")
+        wanted = [b for b in candidates if not only or b.workspace in only]
+        detail = "; ".join(f"{b.recipe}: {reasons[b.recipe]}" for b in wanted)
+        limit = f" with {', '.join(only)} workspace only" if only else ""
+        raise NoPlan(
+            f"{op.place}: the call '{op.title}' has no recipe left{limit} "
+            f"({detail or 'none exists'})"
+        )
     return left
 
 

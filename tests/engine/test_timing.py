@@ -82,3 +82,11 @@ def test_a_measured_wire_cannot_go_on_where_the_device_measures_only_at_the_end(
     text = MEASURED + "h q[2];\n"
     with pytest.raises(placer.InputError, match="no-mid-circuit-measurement"):
         placer.plan(read_program(text, "measured.qasm"), "chert-27")
+
+
+def test_a_limit_that_leaves_no_recipe_says_what_its_own_recipes_lack() -> None:
+    with pytest.raises(placer.NoPlan) as caught:
+        placer.plan("full-berths", "tuff-10", only=["clean"])
+    text = str(caught.value)
+    assert "clean-half: needs 1 clean site, 0 can be free" in text
+    assert "none-linear" not in text
