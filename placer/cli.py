@@ -274,7 +274,7 @@ def check(plan_file: str, *, as_json: bool) -> None:
 
 
 @main.command()
-@click.argument("name", metavar="FILE")
+@click.argument("name", metavar="FILE", default="")
 @click.option(
     "--open-inputs",
     is_flag=True,
@@ -283,7 +283,7 @@ def check(plan_file: str, *, as_json: bool) -> None:
 @click.option(
     "--recipes",
     is_flag=True,
-    help="FILE is a kind of call (mcx, add, ...): list its recipes.",
+    help="FILE is a kind of call (mcx, add, ...): list its recipes; all without it.",
 )
 @click.option(
     "--size",
@@ -319,6 +319,10 @@ def show(
     if recipes:
         _show_recipes(name, size, device_name, as_json=as_json)
         return
+    if not name:
+        raise click.UsageError("Missing argument 'FILE'.")
+    if device_name is not None:
+        raise click.UsageError("'--device' goes with '--recipes'.")
     is_device = sort_of(name) == "device"
     if is_device:
         device = _load_device(name)
@@ -337,8 +341,17 @@ def show(
 def _show_recipes(
     kind: str, size: int, device_name: str | None, *, as_json: bool
 ) -> None:
-    from placer.report.recipes import recipe_rows, recipes_text
+    from placer.report.recipes import kinds, kinds_text, recipe_rows, recipes_text
 
+    if not kind:
+        if device_name is not None:
+            raise click.UsageError("'--device' needs a kind of call.")
+        if as_json:
+            found = {name: list(names) for name, (_, names) in kinds(size).items()}
+            _print_json({"kinds": found})
+        else:
+            click.echo(kinds_text(size, **_look(sys.stdout)), nl=False)
+        return
     device = None if device_name is None else _load_device(device_name)
     if as_json:
         _print_json({"kind": kind, "recipes": recipe_rows(kind, size, device)})

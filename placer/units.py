@@ -64,3 +64,13 @@ def success_of(cost: int) -> float:
 def nats(cost: int) -> float:
     """Return a cost as a plain number of nats."""
     return cost / COST_PER_NAT
+
+
+def decimal_up(value: float, places: int) -> float:
+    """Return the least decimal of so many places that is no less than a value."""
+    return math.ceil(value * 10.0**places) / 10.0**places
+
+
+def decimal_down(value: float, places: int) -> float:
+    """Return the largest decimal of so many places that is no more than a value."""
+    return math.floor(value * 10.0**places) / 10.0**places

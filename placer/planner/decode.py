@@ -100,7 +100,7 @@ def alternatives(
     """Return per step what each open recipe would cost where the plan stands then.
 
     `None` marks a recipe that finds no room.  The plan's own choices are committed
-    step after step, in program order.
+    step after step, in planned order.
     """
     return _Decoder(instance, taste, placement).follow(placement)
 
@@ -166,25 +166,28 @@ class _Decoder:
         )
 
     def follow(self, placement: Placement) -> list[list[Offer | None]]:
+        """Price the open recipes of each step where a placement stands by then."""
         instance = self.instance
         state = self._begin(placement.sites)
-        table: list[list[Offer | None]] = []
-        for step in range(instance.steps):
-            self._place_new_wires(state, step)
-            known = len(instance.profiles[step]) == 1
-            row: list[Offer | None] = [None]
-            if not known:
-                row = [self._offer(state, step, c) for c in self.taste.recipes[step]]
-            table.append(row)
+        table: list[list[Offer | None]] = [[None]] * instance.steps
+        order = sorted(range(instance.steps), key=lambda i: (placement.starts[i], i))
+        for step in order:
+            for w in instance.operands[step]:
+                if instance.wires[w].uses[0] == step:
+                    state.reserved.pop(state.sites[w], None)
+                    state.holder[state.sites[w]] = w
+            if len(instance.profiles[step]) > 1:
+                table[step] = [
+                    self._offer(state, step, c) for c in self.taste.recipes[step]
+                ]
             profile = instance.profiles[step][placement.recipes[step]]
-            where = local_sites(
-                instance, step, placement.sites, placement.slot_sites[step]
-            )
+            slots = placement.slot_sites[step]
+            where = local_sites(instance, step, placement.sites, slots)
             start = placement.starts[step]
             end = start + duration(instance, profile, where)
-            slots = placement.slot_sites[step]
-            chosen = Offer(0.0, placement.recipes[step], slots, start, end)
-            self._commit(state, step, chosen)
+            self._commit(
+                state, step, Offer(0.0, placement.recipes[step], slots, start, end)
+            )
         return table
 
     def _place_new_wires(self, state: _State, step: int) -> None:
@@ -248,17 +251,12 @@ class _Decoder:
             slots, slot_price, start = found
             price += slot_price
         everything = [*where, *slots]
-        length = float(profile.base_ns)
-        for pair in profile.pairs:
-            a, b = everything[pair.a], everything[pair.b]
-            if pair.b < len(where) or pair.a < len(where) or slots:
-                away = float(self.tables.away(pair.mask)[a, b])
-                if away >= self.tables.far:
-                    return None
-                length += pair.count * away * self.tables.move_ns
-        end = start + round(length)
+        try:
+            end = start + duration(self.instance, profile, everything)
+        except Misfit:
+            return None
         price += self.delay_price * self.hurry[step] * (end - ready)
-        price += self._lender_delay(state, slots, end)
+        price += self._lender_delay(state, step, slots, end)
         return Offer(price, c, tuple(slots), start, end)
 
     def _operand_price(self, profile: Profile, where: Sequence[int]) -> float:
@@ -358,7 +356,10 @@ class _Decoder:
             gate = self._floor(pair.mask)
             price += pair.count * (gate + scale * (row - gate))
 
-    def _lender_delay(self, state: _State, slots: Sequence[int], end: int) -> float:
+    def _lender_delay(
+        self, state: _State, step: int, slots: Sequence[int], end: int
+    ) -> float:
+        """Price what a lender's next step loses by waiting for its site."""
         total = 0.0
         for p in slots:
             w = state.holder[p]
@@ -366,14 +367,11 @@ class _Decoder:
                 w = state.reserved.get(p, -1)
             if w < 0:
                 continue
-            following = self._next_step(state, w)
+            following = self.next_use[step].get(w, -1)
             if following >= 0 and end > self.due[following]:
                 late = end - self.due[following]
                 total += self.delay_price * self.hurry[following] * late
         return total
-
-    def _next_step(self, state: _State, w: int) -> int:
-        return self.next_use[len(state.starts)].get(w, -1)
 
     def _commit(self, state: _State, step: int, offer: Offer) -> None:
         state.recipes.append(offer.recipe)

@@ -9,10 +9,9 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from placer.planner.decode import Offer, Taste, alternatives
-from placer.planner.placement import Misfit
 from placer.planner.policies import everything_allowed
 from placer.problem import every_recipe, why_not
-from placer.units import nats
+from placer.units import COST_PER_NAT
 
 if TYPE_CHECKING:
     from placer.planner.placement import Instance, Placement
@@ -24,10 +23,7 @@ Reasons = tuple[tuple[str, str], ...]
 def reasons(instance: Instance, placement: Placement) -> list[Reasons]:
     """Return per step why each other recipe was not taken."""
     taste = Taste(everything_allowed(instance))
-    try:
-        table = alternatives(instance, placement, taste)
-    except Misfit:
-        table = [[None] * len(row) for row in instance.profiles]
+    table = alternatives(instance, placement, taste)
     excluded: dict[tuple[object, ...], Reasons] = {}
     result: list[Reasons] = []
     problem = instance.problem
@@ -81,7 +77,7 @@ def _reason(
     gates = f"{_gates(loser)} two-body gates against {_gates(winner)}"
     if own is None:
         return gates
-    difference = nats(round(offer.price - own.price))
+    difference = (offer.price - own.price) / COST_PER_NAT
     longer = offer.end - own.end
     time = f", {abs(longer)} ns {'later' if longer > 0 else 'sooner'}" if longer else ""
     if difference > 0:

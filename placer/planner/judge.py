@@ -155,6 +155,6 @@ class Judge:
             return judged
         mean = sum(counts) / len(counts)
         kept = dataclasses.replace(
-            judged.route, held_out=len(counts), expected_swaps=round(mean, 3)
+            judged.route, held_out=len(counts), expected_swaps=mean
         )
         return dataclasses.replace(judged, route=kept)

@@ -8,6 +8,7 @@ not timed, so that the same question gets the same answer.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from importlib.metadata import version
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -17,7 +18,12 @@ from placer.plan import POLICIES
 from placer.planner import bounds
 from placer.planner.joint import Open, everything, solve, tighten
 from placer.planner.judge import Judge, Judged
-from placer.planner.placement import Instance, Placement, make_instance
+from placer.planner.placement import (
+    Instance,
+    Placement,
+    keeps_limits,
+    make_instance,
+)
 from placer.planner.policies import allowed, everything_allowed
 from placer.planner.proof import can_prove
 from placer.planner.region import narrowed
@@ -32,6 +38,8 @@ if TYPE_CHECKING:
     from placer.plan import Figures
     from placer.problem import Problem
 
+JOINT_RULE = f"joint model (walk over all sites, CP-SAT {version('ortools')})"
+
 Choice = tuple[tuple[int, ...], ...]
 Effort = Literal["quick", "normal", "deep"]
 
@@ -43,9 +51,9 @@ class Work:
     `search` and `policy` are search amounts, `steps` the most steps that one search
     decodes over all its rounds, `gates` the two-body gates that optional routes may
     have together (`repair_gates`: those of repairs), `routed` the candidates judged
-    per search, `windows`, `flips`,
-    `repairs` and `routes` (per final candidate) plain counts, `joint` CP-SAT's
-    deterministic time, `joint_size` the largest joint model (about its clauses).
+    per search, `windows`, `flips`, `repairs` and `routes` (per final candidate) plain
+    counts, `joint` CP-SAT's deterministic time, `joint_size` the largest joint model
+    (about its clauses).
     """
 
     search: Amount
@@ -458,8 +466,11 @@ class _Engine:
         """Put the result together with its bounds."""
         least = bounds.least_estimate(self.instance, self.recipes)
         by = bounds.ESTIMATE_RULE
-        if self.joint_bound is not None and self.joint_bound >= least:
-            least, by = self.joint_bound, "joint model"
+        # The joint model bounds what keeps the limits; a plan that does not keep them
+        # may cost less.
+        is_bounded = keeps_limits(self.instance, best.placement)
+        if self.joint_bound is not None and is_bounded and self.joint_bound >= least:
+            least, by = self.joint_bound, JOINT_RULE
         if least > best.estimate:
             raise InternalError(
                 f"the bound {least} ({by}) passes the plan's cost {best.estimate}"

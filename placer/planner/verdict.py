@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-import math
 from typing import TYPE_CHECKING
 
 from placer.plan import Limit, Verdict
+from placer.units import decimal_down, decimal_up
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -156,8 +156,8 @@ def _share(upper: str) -> str:
 
 
 def _up(value: float) -> str:
-    return f"{math.ceil(value * 1e3) / 1e3:g}"
+    return f"{decimal_up(value, 3):g}"
 
 
 def _down(value: float) -> str:
-    return f"{math.floor(value * 1e4) / 1e4:g}"
+    return f"{decimal_down(value, 4):g}"

@@ -18,7 +18,7 @@ from placer.program.yaml_block import repeat, scope
 from placer.program.yaml_call import mcp, mcx, mcz, product
 from placer.program.yaml_operand import NAME, RESERVED
 from placer.program.yaml_readout import barrier, measure, reset
-from placer.program.yaml_routine import Routines, call, read_routines
+from placer.program.yaml_routine import call, read_routines
 from placer.program.yaml_step import WIDEST, Steps, TooMany
 from placer.yamlnode import Faults, Node
 from placer.yamltext import parse
@@ -64,7 +64,6 @@ def read_yaml(text: str, path: str, *, open_inputs: bool = False) -> Program:
     bits = _bits(entries.get("bits"), draft, faults)
     steps = Steps(draft, names, bits, faults, _READERS)
     steps.owners.update(owners)
-    steps.routines = Routines()
     if "routines" in entries:
         read_routines(entries["routines"], faults, _READERS, path, steps.routines)
     _check_names(entries, faults)

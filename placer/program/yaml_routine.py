@@ -9,7 +9,7 @@ verified claim becomes one call of that kind, for which recipes may be chosen.
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import replace
 
 import numpy as np
 
@@ -28,7 +28,7 @@ from placer.program.signature import (
 )
 from placer.program.yaml_block import add_workspace, read_part
 from placer.program.yaml_operand import NAME, RESERVED
-from placer.program.yaml_step import WIDEST, Steps
+from placer.program.yaml_step import WIDEST, Routine, Routines, Steps
 from placer.yamlnode import Node
 
 _KEYS = ("arguments", "scratch", "borrowed", "steps", "computes")
@@ -36,31 +36,6 @@ _KEYS = ("arguments", "scratch", "borrowed", "steps", "computes")
 _PERMUTING = frozenset({"x", "cx", "swap"})
 
 Readers = Mapping[str, Callable[[Steps, Node], None]]
-
-
-@dataclass(frozen=True, slots=True)
-class Routine:
-    """A routine: argument widths in order, scratch, steps, and what it computes.
-
-    `borrowed` scratch may hold anything and comes back as it was: that is verified.
-    A call gives it fresh workspace in |0>, which always serves.
-    """
-
-    name: str
-    arguments: Mapping[str, int]
-    scratch: Node | None
-    borrowed: Node | None
-    steps: Node
-    computes: Step | None
-    place: Place
-
-
-@dataclass(slots=True)
-class Routines:
-    """All routines by name; calls of those that have faults are not told again."""
-
-    known: dict[str, Routine] = field(default_factory=dict)
-    failed: set[str] = field(default_factory=set)
 
 
 def read_routines(

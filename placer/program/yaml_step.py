@@ -8,7 +8,6 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
-from typing import Any
 
 from placer.errors import Fault, InputError, Place, did_you_mean
 from placer.program.draft import Draft, Part, Step
@@ -24,6 +23,31 @@ WIDEST = 100_000
 
 class TooMany(InputError):  # noqa: N818 - a fault that ends the pass
     """The program becomes too large to go on reading."""
+
+
+@dataclass(frozen=True, slots=True)
+class Routine:
+    """A routine: argument widths in order, scratch, steps, and what it computes.
+
+    `borrowed` scratch may hold anything and comes back as it was: that is verified.
+    A call gives it fresh workspace in |0>, which always serves.
+    """
+
+    name: str
+    arguments: Mapping[str, int]
+    scratch: Node | None
+    borrowed: Node | None
+    steps: Node
+    computes: Step | None
+    place: Place
+
+
+@dataclass(slots=True)
+class Routines:
+    """All routines by name; calls of those that have faults are not told again."""
+
+    known: dict[str, Routine] = field(default_factory=dict)
+    failed: set[str] = field(default_factory=set)
 
 
 @dataclass(slots=True)
@@ -46,7 +70,7 @@ class Steps:
     owners: dict[int, int] = field(default_factory=dict)
     workspace_of: dict[int, list[int]] = field(default_factory=dict)
     count: int = 0
-    routines: Any = None
+    routines: Routines = field(default_factory=Routines)
 
     def read(self, node: Node) -> None:
         """Read a list of steps."""

@@ -50,7 +50,7 @@ def example_call(kind: str, size: int) -> Operation:
             f"there is no kind of call '{kind}'",
             did_you_mean(kind, CALL_KINDS) or f"kinds: {', '.join(CALL_KINDS)}",
         )
-    most = 8 if kind in ("lookup", "multiply_add") else LARGEST
+    most = most_of(kind)
     if not 2 <= size <= most:
         raise InputError.at(
             place, "size", f"the size {size} of '{kind}' is not in 2..{most}"
@@ -106,9 +106,14 @@ def recipe_rows(kind: str, size: int, device: Device | None) -> list[dict[str, A
             + sizes.two_qubit_conditional
             + sizes.level2_gates,
             "t": sizes.t,
+            "t_depth": sizes.t_depth,
             "rotations": sizes.rotations,
             "depth": sizes.depth,
+            "toffoli_depth": sizes.toffoli_depth,
             "two_qubit_depth": sizes.two_qubit_depth,
+            "measurements": sizes.measurements,
+            "live_gates": list(sizes.live_gates),
+            "level2_window": sizes.level2_window,
             "source": recipe.source,
             "kept_for": library.kept_for(name),
         }
@@ -160,8 +165,7 @@ def recipes_text(
     page.paragraph(f"{title}: {len(rows)} recipes{where}", shade="title")
     page.line()
     columns = ["recipe", "needs", "two-body", "T", "depth"]
-    if device is not None:
-        columns += ["time", "least error"]
+    columns += ["T depth"] if device is None else ["time", "least error"]
     page.table(columns, [_cells(row, device is not None) for row in rows])
     page.heading("Where they come from")
     for row in rows:
@@ -178,6 +182,32 @@ def recipes_text(
     return page.text()
 
 
+def kinds_text(size: int, *, width: int = WIDTH, colour: bool = False) -> str:
+    """Return every kind of call with the names of its recipes at a size."""
+    page = Page(width, colour=colour)
+    page.paragraph("Recipes of every kind of call", shade="title")
+    for kind, (at, names) in kinds(size).items():
+        page.line()
+        page.paragraph(f"{kind}, size {at}: {', '.join(names)}", 1)
+    page.line()
+    page.paragraph("'placer show KIND --recipes' lists one kind with its counts.")
+    return page.text()
+
+
+def kinds(size: int) -> dict[str, tuple[int, tuple[str, ...]]]:
+    """Return per kind the size (the largest possible, at most `size`) and recipes."""
+    result = {}
+    for kind in CALL_KINDS:
+        at = min(size, most_of(kind))
+        result[kind] = (at, library.names_for(example_call(kind, at)))
+    return result
+
+
+def most_of(kind: str) -> int:
+    """Return the largest size that is listed; tables grow as its power of two."""
+    return 8 if kind in ("lookup", "multiply_add") else LARGEST
+
+
 def _cells(row: dict[str, Any], has_device: bool) -> Sequence[str]:
     needs = [f"{row[k]} {k}" for k in ("clean", "borrowed") if row[k]]
     if row["level2_wires"]:
@@ -192,8 +222,10 @@ def _cells(row: dict[str, Any], has_device: bool) -> Sequence[str]:
         f"{row['t']}{turned}",
         str(row["depth"]),
     ]
-    if has_device and row["time_ns"] is None:
+    if not has_device:
+        cells.append(str(row["t_depth"]))
+    elif row["time_ns"] is None:
         cells += ["-", row["why_not"]]
-    elif has_device:
+    else:
         cells += [f"{row['time_ns'] / 1e3:.3g} us", f"{row['least_error']:.2e}"]
     return cells

@@ -11,10 +11,10 @@ from placer.device.model import Budget
 from placer.device.read import find_device
 from placer.planner import bounds
 from placer.planner.anneal import anneal, flow_of, move, neighbours_of
-from placer.planner.decode import Taste, decode
+from placer.planner.decode import Taste, alternatives, decode
 from placer.planner.explain import reasons
 from placer.planner.judge import Judge
-from placer.planner.loop import run
+from placer.planner.loop import WORK, _Engine, run
 from placer.planner.placement import Instance, evaluate, make_instance
 from placer.planner.policies import allowed, everything_allowed
 from placer.planner.region import narrowed
@@ -178,3 +178,29 @@ def test_policies_allow_only_their_workspace() -> None:
                 built = instance.profiles[step][c].built
                 plain = built.workspace == "none" and built.controls <= 2
                 assert plain or built.workspace == policy
+
+
+def test_a_bound_under_limits_says_nothing_about_a_plan_that_breaks_them() -> None:
+    instance = instance_of(1, "slate-16", 6, 4, Budget(longest_ns=1))
+    recipes = everything_allowed(instance)
+    placement = decode(instance, list(instance.usable[:6]), Taste(recipes))
+    judge = Judge(instance, seed=0)
+    engine = _Engine(instance, instance, judge, WORK["quick"], 0, lambda _: None)
+    engine.joint_bound = judge.estimate(placement) + 1
+    judged = judge.route(placement)
+    assert judged is not None
+    outcome = engine.outcome(judged, ())
+    assert outcome.least_by == bounds.ESTIMATE_RULE
+    assert outcome.least <= judged.estimate
+
+
+def test_reasons_are_priced_where_the_plan_stands_in_planned_order() -> None:
+    # Workspace wires of two scopes may share a site; the later one in time may stand
+    # first in the program.  Every recipe must still find its own price.
+    instance = instance_of(2, "tuff-10", 6, 10)
+    recipes = everything_allowed(instance)
+    placement = decode(instance, list(instance.usable[:6]), Taste(recipes))
+    table = alternatives(instance, placement, Taste(recipes))
+    for step, row in enumerate(instance.profiles):
+        if len(row) > 1:
+            assert table[step][placement.recipes[step]] is not None

@@ -73,3 +73,25 @@ def test_a_recipe_that_another_beats_says_why_it_stays() -> None:
                     assert row["kept_for"], (kind, size, row["recipe"])
                     beaten.add(row["recipe"].removeprefix("equal-"))
     assert beaten == set(library.KEPT_FOR)
+
+
+def test_without_a_kind_every_kind_is_listed() -> None:
+    run = CliRunner()
+    text = run.invoke(main, ["show", "--recipes"])
+    assert text.exit_code == 0
+    assert all(kind in text.stdout for kind in CALL_KINDS)
+    data = json.loads(run.invoke(main, ["show", "--recipes", "--json"]).stdout)
+    assert set(data["kinds"]) == set(CALL_KINDS)
+    assert "clean-ladder" in data["kinds"]["mcx"]
+    for words in (["show"], ["show", "slate-16", "-d", "slate-16"]):
+        assert run.invoke(main, words).exit_code == 2
+
+
+def test_rows_hold_depths_and_lives_of_slots() -> None:
+    # Live times of the clean ladder sum to (k-2)^2 Toffoli slots; here in gates, one
+    # entry a slot.  Level-2 chain: 2k-1 two-body gates, depth the same.
+    rows = {row["recipe"]: row for row in recipe_rows("mcx", 5, None)}
+    assert len(rows["clean-ladder"]["live_gates"]) == 3
+    assert rows["clean-ladder"]["t_depth"] > 0
+    assert rows["level2-chain"]["two_body"] == rows["level2-chain"]["depth"] == 9
+    assert rows["level2-chain"]["level2_window"] > 0
