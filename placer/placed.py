@@ -238,6 +238,7 @@ def place(
     where = flat.local + np.repeat(np.array(maps[:-1], dtype=np.int64), spans)
     begins = np.cumsum(sizes) - sizes
     cause = np.where(flat.cause < 0, -1, flat.cause + np.repeat(begins, sizes))
+    _listen(problem, recipes, order, begins, cause)
     flow = _flow(
         flat._replace(cause=cause, local=np.array(site_map, dtype=np.int64)[where]),
         len(problem.device.sites),
@@ -252,6 +253,29 @@ def place(
         leases,
         fresh,
     )
+
+
+def _listen(
+    problem: Problem,
+    recipes: Sequence[Built],
+    order: Sequence[int],
+    begins: Ints,
+    cause: Ints,
+) -> None:
+    """Let operations that wait for a bit of the program depend on its measurement.
+
+    A bit that no step before has measured is 0 from the start: nothing to wait for.
+    """
+    written: dict[str, int] = {}
+    for place, step in enumerate(order):
+        begin = int(begins[place])
+        for number, op in enumerate(recipes[step].fine.ops):
+            if op.listens is None:
+                break
+            cause[begin + number] = written.get(op.listens, -1)
+        bit = problem.program.operations[step].bit
+        if bit is not None:
+            written[bit] = begin
 
 
 def _join(parts: Sequence[_Template]) -> _Template:

@@ -8,7 +8,7 @@ plain gate, a measurement) has exactly one.
 from __future__ import annotations
 
 import hashlib
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Literal
 
 from placer.errors import InputError, NoPlan, Place
@@ -74,7 +74,7 @@ def as_written(op: Operation) -> Built:
     """Return the one way to do a step that is not a call."""
     count = len(op.wires)
     if op.kind == "gate":
-        fine = standard.lower(op.name, op.params)
+        fine = _listening(standard.lower(op.name, op.params), op.condition)
         name = op.name
     else:
         fine = Circuit(
@@ -90,9 +90,16 @@ def as_written(op: Operation) -> Built:
             bits=1 if op.kind == "measure" else 0,
         )
         name = op.kind
-    coarse_op = Op(name, tuple(range(count)), op.params)
+    coarse_op = Op(name, tuple(range(count)), op.params, listens=op.condition)
     coarse = fine if op.kind != "gate" else Circuit(count, (), (coarse_op,))
     return Built(AS_WRITTEN, op.kind, 0, "none", False, coarse, fine)
+
+
+def _listening(circuit: Circuit, bit: str | None) -> Circuit:
+    """Return a circuit all of whose operations wait for a bit of the program."""
+    if bit is None:
+        return circuit
+    return replace(circuit, ops=tuple(replace(op, listens=bit) for op in circuit.ops))
 
 
 def every_recipe(op: Operation) -> tuple[Built, ...]:

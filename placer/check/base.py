@@ -60,6 +60,8 @@ def _make_base(built: Built, numbers: Numbers) -> Base:
         at = max([free.get(w, 0) for w in op.wires], default=0)
         if op.condition is not None:
             at = max(at, answered.get(op.condition, 0) + numbers.latency_ns)
+        if op.listens is not None:
+            at = max(at, numbers.latency_ns)
         done = at + _nominal(op, numbers)
         for w in op.wires:
             begin.setdefault(w, at)

@@ -68,6 +68,7 @@ def lay_out(case: Case) -> Layout:
     for wire in range(len(program.wire_names)):
         if program.register_at(wire).workspace:
             layout.values.add(wire)
+    answers: dict[str, int] = {}
     for step in case.order():
         holders: list[int] = list(step.op.wires)
         for lease in step.leases:
@@ -77,7 +78,7 @@ def lay_out(case: Case) -> Layout:
                 layout.values.add(lender)
                 layout.names.append(slot_name(step, lease.slot))
             holders.append(lender)
-        _add_acts(layout, step, holders)
+        _add_acts(layout, step, holders, answers)
     for token in sorted(layout.queues):
         _mark_lives(layout, token, len(program.wire_names))
     return layout
@@ -90,14 +91,19 @@ def slot_name(step: Planned, slot: int) -> str:
     return f"slot {slot} of '{step.op.name}'{at}"
 
 
-def _add_acts(layout: Layout, step: Planned, holders: list[int]) -> None:
+def _add_acts(
+    layout: Layout, step: Planned, holders: list[int], answers: dict[str, int]
+) -> None:
+    """Add the acts of a step; `answers` knows the measurement behind each bit."""
     measured: dict[int, int] = {}
     for op in step.built.fine.ops:
         number = len(layout.acts)
-        act = _act(step, op, holders, measured)
+        act = _act(step, op, holders, measured, answers)
         layout.acts.append(act)
         if op.bit is not None:
             measured[op.bit] = number
+        if op.name == "measure" and step.op.bit is not None:
+            answers[step.op.bit] = number
         if act.cause is not None:
             layout.heard.setdefault(act.cause, []).append(number)
         for token in dict.fromkeys(act.tokens):
@@ -106,9 +112,18 @@ def _add_acts(layout: Layout, step: Planned, holders: list[int]) -> None:
             layout.gates.append(number)
 
 
-def _act(step: Planned, op: Op, holders: list[int], measured: dict[int, int]) -> Act:
+def _act(
+    step: Planned,
+    op: Op,
+    holders: list[int],
+    measured: dict[int, int],
+    answers: dict[str, int],
+) -> Act:
     high = op.name == "level2"
     where = step.where
+    cause = None if op.condition is None else measured.get(op.condition)
+    if op.listens is not None:
+        cause = answers.get(op.listens)
     return Act(
         name=op.name,
         tokens=tuple(where[w] for w in op.wires),
@@ -116,7 +131,7 @@ def _act(step: Planned, op: Op, holders: list[int], measured: dict[int, int]) ->
         needs=tuple(high and w in step.built.level2_wires for w in op.wires),
         enters=tuple(where[w] for w in op.enters),
         leaves=tuple(where[w] for w in op.leaves),
-        cause=None if op.condition is None else measured.get(op.condition),
+        cause=cause,
         step=step,
     )
 

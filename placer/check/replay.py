@@ -78,6 +78,8 @@ class _Replay:
             self.sites[case.sites[wire]] = self.wires[wire]
         self.before: dict[int, Bits] = {}
         self.after: dict[int, Bits] = {}
+        self.said: dict[str, int] = {}
+        self.heard: dict[str, int] = {}
         self.found = 0
 
     def find(self, rule: str, where: str, what: str) -> None:
@@ -89,7 +91,7 @@ class _Replay:
         for op in program.operations:
             bits = [self.wires[w] for w in op.wires]
             self.before[op.index] = list(bits)
-            meaning(op, bits, self.seed)
+            meaning(op, bits, self.seed, self.said)
             self.after[op.index] = bits
             for at, value in zip(op.wires, bits, strict=True):
                 self.wires[at] = value
@@ -145,7 +147,7 @@ class _Replay:
             self._coarse(step)
         else:
             bits = list(got)
-            meaning(step.op, bits, self.seed)
+            meaning(step.op, bits, self.seed, self.heard)
             for site, value in zip(step.where, bits, strict=True):
                 sites[site] = value
         gave = [sites[p] for p in step.where[: len(step.op.wires)]]
@@ -221,8 +223,25 @@ def _writers(operations: tuple[Operation, ...] | list[Operation]) -> dict[str, i
     return {op.bit: op.index for op in operations if op.bit is not None}
 
 
-def meaning(op: Operation, bits: Bits, seed: int) -> None:
-    """Do a step as the program means it, on the bits of its wires."""
+def meaning(
+    op: Operation, bits: Bits, seed: int, outcomes: dict[str, int] | None = None
+) -> None:
+    """Do a step as the program means it, on the bits of its wires.
+
+    `outcomes` holds what was measured into each classical bit.
+    """
+    outcomes = {} if outcomes is None else outcomes
+    before = list(bits)
+    _meaning(op, bits, seed)
+    if op.bit is not None:
+        outcomes[op.bit] = bits[0]
+    if op.condition is not None:
+        on = outcomes.get(op.condition, 0)
+        for place, (old, new) in enumerate(zip(before, bits, strict=True)):
+            bits[place] = (new & on) | (old & ~on & ALL_ON)
+
+
+def _meaning(op: Operation, bits: Bits, seed: int) -> None:
     if op.signature is not None:
         _arithmetic(op.signature, bits)
     elif op.kind in ("mcx", "and"):

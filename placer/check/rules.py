@@ -38,7 +38,7 @@ RULES: tuple[Rule, ...] = tuple(
         ("level2-missing", "what enters level 2 sits on a site that offers it"),
         ("link-out-of-reach", "everything that must meet can reach a fitting link"),
         # The planned schedule.
-        ("order-broken", "a step starts after every earlier step on its wires"),
+        ("order-broken", "a step starts after earlier steps on its wires and bits"),
         ("duration-misstated", "a step takes as long as its recipe at its sites"),
         ("two-things-one-site", "a site holds one thing at a time"),
         ("lender-busy", "a lender is idle over the whole lease"),

@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING
 from placer.check.base import base_of
 
 if TYPE_CHECKING:
+    from collections.abc import Iterator
+
     from placer.check.case import Case, Planned
 
 
@@ -54,9 +56,10 @@ def _check_capabilities(case: Case) -> None:
     for step in case.steps:
         kind = step.op.kind
         missing = ""
+        listens = step.built.needs_measurement or step.op.condition is not None
         if step.built.needs_measurement and not able.mid_circuit_measurement:
             missing = "measurement in mid-circuit"
-        elif step.built.needs_measurement and able.conditional_ns is None:
+        elif listens and able.conditional_ns is None:
             missing = "conditional gates"
         elif kind == "reset" and not able.reset:
             missing = "reset"
@@ -78,12 +81,34 @@ def _check_level2(case: Case) -> None:
 
 
 def _check_order(case: Case) -> None:
+    for one, two, shared in _ordered(case):
+        if two.start < one.end:
+            text = f"starts at {two.start}, {one.label} on {shared} ends at {one.end}"
+            case.find("order-broken", two.label, text)
+
+
+def _ordered(case: Case) -> Iterator[tuple[Planned, Planned, str]]:
+    """Return steps that must not overlap: earlier, later, and what they share.
+
+    A gate comes between the measurement it waits for and the next into that bit.
+    """
     for wire in sorted(case.uses):
         for one, two in itertools.pairwise(case.uses[wire]):
-            if two.start < one.end:
-                name = case.program.wire_names[wire]
-                text = f"starts at {two.start}, {one.label} on {name} ends at {one.end}"
-                case.find("order-broken", two.label, text)
+            yield one, two, case.program.wire_names[wire]
+    written: dict[str, Planned] = {}
+    heard: dict[str, list[Planned]] = {}
+    for step in case.steps:
+        bit = step.op.condition
+        if bit is not None and bit in written:
+            yield written[bit], step, f"bit {bit}"
+            heard.setdefault(bit, []).append(step)
+        bit = step.op.bit
+        if bit is not None:
+            for one in heard.pop(bit, ()):
+                yield one, step, f"bit {bit}"
+            if bit in written:
+                yield written[bit], step, f"bit {bit}"
+            written[bit] = step
 
 
 def _duration(case: Case, step: Planned) -> int | None:

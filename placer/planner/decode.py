@@ -18,6 +18,7 @@ from placer.planner.placement import (
     Misfit,
     Placement,
     duration,
+    earlier_steps,
     local_sites,
 )
 
@@ -126,7 +127,7 @@ class _Decoder:
         self.delay_price = mean_rate * max(1, len(held)) * taste.delay_scale
         self.next_use = _next_uses(instance)
         self.hurry, self.due = _hurry(instance, earlier)
-        self.earlier = {two: one for one, two in instance.follows}
+        self.earlier = earlier_steps(instance)
         self.floors: dict[Mask, float] = {}
 
     def _floor(self, mask: Mask) -> float:
@@ -234,7 +235,8 @@ class _Decoder:
         operands = self.instance.operands[step]
         where = [state.sites[w] for w in operands]
         ready = max((state.wire_ready[w] for w in operands), default=0)
-        ready = max(ready, state.ends.get(self.earlier.get(step, -1), 0))
+        for one in self.earlier.get(step, ()):
+            ready = max(ready, state.ends.get(one, 0))
         for w in operands:
             wire = self.instance.wires[w]
             if wire.uses[0] == step and wire.is_known_zero:

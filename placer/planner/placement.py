@@ -52,7 +52,7 @@ class Instance:
     """A problem with its device tables and profiles: what every stage works on.
 
     `follows` lists steps (earlier, later) that share no wire and still keep their
-    order: measurements into the same classical bit.
+    order: measurements into one classical bit, and the gates that wait for it.
     """
 
     problem: Problem
@@ -114,20 +114,37 @@ def make_instance(problem: Problem, tables: Tables) -> Instance:
         tuple(tuple(op.wires) for op in program.operations),
         tuple(profiles),
         tuple(s.id for s in problem.device.sites if s.in_service),
-        _same_bits(program.operations),
+        _by_bits(program.operations),
     )
 
 
-def _same_bits(operations: Sequence[Operation]) -> tuple[tuple[int, int], ...]:
-    """Return the measurements that write the same bit, each with the next one."""
-    last: dict[str, int] = {}
+def _by_bits(operations: Sequence[Operation]) -> tuple[tuple[int, int], ...]:
+    """Return the pairs of steps whose order one classical bit demands.
+
+    A measurement comes after the one before it into the same bit and after the gates
+    that waited for that one; a gate comes after the measurement it waits for.
+    """
+    written: dict[str, int] = {}
+    heard: dict[str, list[int]] = {}
     pairs = []
     for op in operations:
+        if op.condition is not None and op.condition in written:
+            pairs.append((written[op.condition], op.index))
+            heard.setdefault(op.condition, []).append(op.index)
         if op.bit is not None:
-            if op.bit in last:
-                pairs.append((last[op.bit], op.index))
-            last[op.bit] = op.index
+            before = [written[op.bit]] if op.bit in written else []
+            before += heard.pop(op.bit, [])
+            pairs += [(one, op.index) for one in before]
+            written[op.bit] = op.index
     return tuple(pairs)
+
+
+def earlier_steps(instance: Instance) -> dict[int, list[int]]:
+    """Return per step the steps it must follow though they share no wire."""
+    earlier: dict[int, list[int]] = {}
+    for one, two in instance.follows:
+        earlier.setdefault(two, []).append(one)
+    return earlier
 
 
 def local_sites(
@@ -190,13 +207,13 @@ def schedule(
         if not wire.is_known_zero and not (wire.is_workspace and not wire.uses)
     }
     starts = [0] * instance.steps
-    earlier = {two: one for one, two in instance.follows}
+    earlier = earlier_steps(instance)
     ends: dict[int, int] = {}
     for step in order:
         profile = instance.profiles[step][recipes[step]]
         slots = slot_sites[step]
         where = local_sites(instance, step, sites, slots)
-        start = ends.get(earlier.get(step, -1), 0)
+        start = max((ends.get(one, 0) for one in earlier.get(step, ())), default=0)
         for w in instance.operands[step]:
             start = max(start, wire_ready[w])
             if instance.wires[w].uses[0] == step and instance.wires[w].is_known_zero:
@@ -285,7 +302,7 @@ def _stays(
     stays: list[Stay] = []
     for one, two in instance.follows:
         if placement.starts[two] < ends[one]:
-            raise Misfit(f"steps {one} and {two} write one bit in the wrong order")
+            raise Misfit(f"steps {one} and {two} use one bit in the wrong order")
     for number, wire in enumerate(instance.wires):
         for one, two in zip(wire.uses, wire.uses[1:], strict=False):
             if placement.starts[two] < ends[one]:

@@ -64,6 +64,8 @@ def profile_of(built: Built, tables: Tables) -> Profile:
         start = max((ready[w] for w in op.wires), default=0)
         if op.condition is not None:
             start = max(start, bit_at[op.condition] + tables.conditional_ns)
+        if op.listens is not None:
+            start = max(start, tables.conditional_ns)
         end = start + _nominal(op, tables)
         for wire in op.wires:
             ready[wire] = end

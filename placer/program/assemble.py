@@ -76,6 +76,7 @@ def _operation(index: int, step: Step) -> Operation:
         step.part,
         step.annotations,
         step.signature,
+        step.condition,
     )
 
 

@@ -30,6 +30,7 @@ class Step(NamedTuple):
     annotations: tuple[str, ...] = ()
     is_frame: bool = False
     signature: Signature | None = None
+    condition: str | None = None
 
 
 @dataclass(slots=True)

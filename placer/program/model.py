@@ -111,8 +111,10 @@ class Operation:
     Arithmetic calls have a `signature`, which says what their wires mean and whether
     they are inverted.
     A gate has its name from PLAIN_GATES.  `bit` is the classical bit of a measurement,
-    as written in the source (`c[3]`).  `scope` is the number of the innermost scope,
-    -1 outside of all.  `part` says which part of that scope the step belongs to.
+    as written in the source (`c[3]`).  A gate with a `condition`, named like a `bit`,
+    happens only where that bit was measured as 1.  `scope` is the number of the
+    innermost scope, -1 outside of all.  `part` says which part of that scope the step
+    belongs to.
     """
 
     index: int
@@ -127,6 +129,7 @@ class Operation:
     part: Literal["", "compute", "body", "cleanup"] = ""
     annotations: tuple[str, ...] = ()
     signature: Signature | None = None
+    condition: str | None = None
 
     @property
     def is_call(self) -> bool:

@@ -27,9 +27,11 @@ class Op:
     """One gate on local wires.
 
     `bit` is the local classical bit that a `measure` writes; `condition` is the bit
-    that must be 1 for the gate to happen.  A `level2` gate acts on (control, target):
-    when the control is in state `level`, `action` is done to the target: `x01` swaps
-    |0> and |1>, `x12` swaps |1> and |2>, `p1` gives |1> the phase `params[0]`.
+    that must be 1 for the gate to happen; `listens` names a bit of the program that
+    an earlier step measured and the gate waits for.  A `level2` gate acts on
+    (control, target): when the control is in state `level`, `action` is done to the
+    target: `x01` swaps |0> and |1>, `x12` swaps |1> and |2>, `p1` gives |1> the phase
+    `params[0]`.
     `enters` and `leaves` name the wires that may be in |2> from this gate on, and the
     wires that no longer can be after it.
     """
@@ -43,6 +45,7 @@ class Op:
     action: Level2Action | None = None
     enters: tuple[int, ...] = ()
     leaves: tuple[int, ...] = ()
+    listens: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

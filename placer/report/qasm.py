@@ -228,23 +228,32 @@ def _statements(
     writer.cleanup_bits += circuit.bits
     statements: list[str] = []
     block: list[str] = []
-    condition: int | None = None
+    condition: str | None = None
 
     def close() -> None:
         if block:
             body = " ".join(block)
-            name = f"{writer.cleanup}[{base + (condition or 0)}]"
-            statements.append(f"if ({name} == 1) {{ {body} }}")
+            statements.append(f"if ({condition} == 1) {{ {body} }}")
             block.clear()
 
     for gate in circuit.ops:
         text = _gate(writer, gate, here, base)
-        if gate.condition != condition:
+        wanted = _condition(writer, gate, base)
+        if wanted != condition:
             close()
-            condition = gate.condition
+            condition = wanted
         (statements if condition is None else block).append(text)
     close()
     return statements
+
+
+def _condition(writer: _Writer, gate: Op, base: int) -> str | None:
+    """Return the bit that a gate waits for, as the file names it."""
+    if gate.listens is not None:
+        return _bit_text(writer, gate.listens)
+    if gate.condition is not None:
+        return f"{writer.cleanup}[{base + gate.condition}]"
+    return None
 
 
 def _gate(writer: _Writer, gate: Op, here: Sequence[int], base: int) -> str:
