@@ -149,6 +149,7 @@ def _scopes(draft: Draft, steps: Sequence[Step]) -> tuple[Scope, ...]:
                 body,
                 cleanup,
                 scope.place,
+                scope.part,
             )
         )
     return tuple(result)

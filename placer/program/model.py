@@ -158,7 +158,8 @@ class Operation:
 class Scope:
     """A compute part, its body and its cleanup, as ranges of operation indices.
 
-    `parent` is -1 for an outermost scope.  Ranges are half-open.
+    `parent` is -1 for an outermost scope; `part` is the part of the parent that the
+    scope stands in.  Ranges are half-open.
     """
 
     number: int
@@ -168,6 +169,7 @@ class Scope:
     body: tuple[int, int]
     cleanup: tuple[int, int]
     place: Place
+    part: Literal["", "compute", "body", "cleanup"] = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -177,7 +179,8 @@ class Program:
     `wire_names[w]` is the name in the source (`c[0]`, or `t` for a single qubit);
     `bits` lists classical registers as (name, width; 0 = single bit).  `kept` are
     pragmas to re-emit at the top of an output.  `assumed` says in words which start
-    states were assumed.
+    states were assumed.  `moves` says by which moves (`program.rewrite`) the values of
+    the scopes are computed and cleaned up, `None` if as the source says.
     """
 
     name: str
@@ -194,6 +197,7 @@ class Program:
     path: str
     hash: str
     register_of: tuple[int, ...] = field(repr=False, default=())
+    moves: tuple[tuple[str, int], ...] | None = None
 
     def register_at(self, wire: int) -> Register:
         """Return the register that a wire belongs to."""

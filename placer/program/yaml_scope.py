@@ -3,13 +3,12 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import replace
 
 from placer.errors import Fault
 from placer.program.claims import DIAGONAL
 from placer.program.draft import Draft, DraftScope, Part, Step
+from placer.program.inverse import undone
 from placer.program.signature import changed
-from placer.program.terms import inverse_base
 
 _SWAPPED: dict[Part, Part] = {
     "": "",
@@ -17,22 +16,14 @@ _SWAPPED: dict[Part, Part] = {
     "body": "body",
     "cleanup": "compute",
 }
-_UNCHANGED = frozenset({"cx", "cy", "cz", "ch", "mcx", "mcz", "barrier"})
 
 
 def inverse_step(step: Step) -> Step:
     """Return the step that undoes a step, which must be no measurement or reset."""
-    if step.signature is not None:
-        turned = replace(step.signature, inverse=not step.signature.inverse)
-        return step._replace(signature=turned)
-    if step.kind == "and":
-        return step._replace(inverse=not step.inverse)
-    if step.kind == "gate" and step.name not in _UNCHANGED:
-        name, params = inverse_base(step.name, step.params)
-        return step._replace(name=name, params=params)
-    if step.kind == "mcp":
-        return step._replace(params=(-step.params[0],))
-    return step
+    name, params, inverse, signature = undone(
+        step.kind, step.name, step.params, step.inverse, step.signature
+    )
+    return step._replace(name=name, params=params, inverse=inverse, signature=signature)
 
 
 def written(step: Step) -> tuple[int, ...]:
