@@ -162,6 +162,83 @@ class PolicyRow:
 
 
 @dataclass(frozen=True, slots=True)
+class ValueRow:
+    """What became of one value of the program.
+
+    `size` is the number of wires that hold it, `computed` how often it is computed in
+    the plan, `dropped` how often it is measured away.  `treatment` is `once` (computed
+    and cleaned up once), `again` (cleaned up and computed again) or `measured`.
+    `why` says it in words.  `next_best` is the expected error, in units of a plan's
+    costs, of the best other order that was planned and treats this value differently;
+    `None` where there is none.
+    """
+
+    name: str
+    line: int
+    size: int
+    computed: int
+    dropped: int
+    treatment: str
+    why: str
+    next_best: int | None
+
+
+@dataclass(frozen=True, slots=True)
+class OrderRow:
+    """One order of computing and cleaning up that was planned on the device.
+
+    `name` is `as written`, `at once`, `at end`, or `within N wires`; `wires` the
+    most workspace wires that hold values at a time, `computed` the number of times
+    that values are computed.  `effort` is the work that its figures rest on.
+    """
+
+    name: str
+    wires: int
+    computed: int
+    possible: bool
+    reason: str
+    fits: bool
+    figures: Figures | None
+    estimate: int | None
+    effort: str
+
+
+@dataclass(frozen=True, slots=True)
+class CurvePoint:
+    """The least cost of computing and cleaning up within a number of wires.
+
+    `cost` and `bound` are in units of a plan's costs, before anything is placed: gates
+    of the cheapest recipes and waiting at nominal figures.  `cost` is `None` where no
+    order exists (or none was found: then `proven` is false).
+    """
+
+    wires: int
+    cost: int | None
+    bound: int | None
+    proven: bool
+    by: str
+
+
+@dataclass(frozen=True, slots=True)
+class Cleanup:
+    """When values are computed and cleaned up.
+
+    `asked` is what was asked for, `chosen` the name of the row that the plan follows.
+    `moves` are (`compute`, `uncompute`, `drop` or `use`, number of the value or the
+    use); empty where the program's own order is kept.  `crossing` says in words from
+    which number of sites on another order is best.
+    """
+
+    asked: str
+    chosen: str
+    moves: tuple[tuple[str, int], ...]
+    values: tuple[ValueRow, ...]
+    rows: tuple[OrderRow, ...]
+    curve: tuple[CurvePoint, ...]
+    crossing: str
+
+
+@dataclass(frozen=True, slots=True)
 class Limit:
     """One limit of the budget against what the plan does, both in the unit named."""
 
@@ -217,6 +294,7 @@ class Plan:
     policies: tuple[PolicyRow, ...]
     verdict: Verdict
     notes: tuple[str, ...] = ()
+    cleanup: Cleanup | None = None
 
     @property
     def calls(self) -> tuple[Step, ...]:
@@ -235,6 +313,8 @@ def to_json(plan: Plan) -> str:
     data["wires"] = dict(plan.wires)
     figures = data["figures"]
     figures["cost"] = plan.figures.costs.total
+    if plan.cleanup is None:
+        del data["cleanup"]
     bound = data["bound"]
     bound["gap"] = plan.bound.gap
     steps = data.pop("steps")

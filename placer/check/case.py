@@ -10,12 +10,14 @@ from collections import Counter
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any, NamedTuple
 
+from placer.check.cleanup import follow_moves
 from placer.check.numbers import Numbers
 from placer.check.shape import faults_of
 from placer.device.read import read_device
 from placer.errors import InputError
 from placer.problem import as_written
 from placer.program.read import read_program
+from placer.program.values import values_of
 from placer.recipes import catalog, library
 
 if TYPE_CHECKING:
@@ -23,6 +25,7 @@ if TYPE_CHECKING:
 
     from placer.device.model import Device
     from placer.program.model import Operation, Program
+    from placer.program.values import ValueGraph
     from placer.recipes.circuit import Built
 
     Build = Callable[[str, str, int, float, bool], Built]
@@ -72,7 +75,10 @@ class Planned:
 
 @dataclass(slots=True)
 class Case:
-    """Everything the rules look at; `steps` in the order of the program."""
+    """Everything the rules look at; `steps` in the order of the program.
+
+    `graph` holds the values of the program where the plan speaks of them.
+    """
 
     data: Row
     program: Program
@@ -82,6 +88,7 @@ class Case:
     steps: list[Planned] = field(default_factory=list)
     uses: dict[int, list[Planned]] = field(default_factory=dict)
     findings: list[Finding] = field(default_factory=list)
+    graph: ValueGraph | None = None
 
     @property
     def end(self) -> int:
@@ -106,8 +113,14 @@ def open_case(data: Row, build: Build = catalog.build) -> Case | list[Finding]:
     sources = None if texts else _sources(data, texts)
     if sources is None:
         return [Finding("plan-malformed", where, what) for where, what in texts]
-    program, device = sources
+    source, device = sources
+    found: list[Finding] = []
+    program = _as_planned(data, source, device, found)
+    if program is None:
+        return found
     case = Case(data, program, device, Numbers(device))
+    if "cleanup" in data:
+        case.graph = values_of(source)
     _check_sources(case)
     _check_header(case)
     if any(found.rule == "source-changed" for found in case.findings):
@@ -133,6 +146,20 @@ def _sources(data: Row, texts: list[tuple[str, str]]) -> tuple[Program, Device] 
     except InputError as error:
         texts.append(("device", str(error)))
     return None if program is None or device is None else (program, device)
+
+
+def _as_planned(
+    data: Row, source: Program, device: Device, found: list[Finding]
+) -> Program | None:
+    """Return the program that the steps are the steps of; what is wrong is added."""
+    moves = data.get("cleanup", {}).get("moves", [])
+    if not moves:
+        return source
+
+    def find(rule: str, where: str, what: str) -> None:
+        found.append(Finding(rule, where, what))
+
+    return follow_moves(source, moves, device, find)
 
 
 def _check_sources(case: Case) -> None:

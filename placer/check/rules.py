@@ -37,6 +37,14 @@ RULES: tuple[Rule, ...] = tuple(
         ("capability-missing", "the device can measure, reset and react as needed"),
         ("level2-missing", "what enters level 2 sits on a site that offers it"),
         ("link-out-of-reach", "everything that must meet can reach a fitting link"),
+        # When values are computed and cleaned up.
+        ("cleanup-unreadable", "moves name what exists, uses stay in their order"),
+        ("value-read-dead", "nothing reads a value before or after its life"),
+        ("cleanup-input-changed", "a value meets what it was computed from unchanged"),
+        ("record-open", "every measured value is fixed before the end"),
+        ("value-left", "no value is left at the end"),
+        ("cleanup-differs", "the moves compute what the program as written computes"),
+        ("cleanup-misstated", "rows and counts of the cleanup agree with its moves"),
         # The planned schedule.
         ("order-broken", "a step starts after earlier steps on its wires and bits"),
         ("duration-misstated", "a step takes as long as its recipe at its sites"),

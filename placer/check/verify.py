@@ -17,6 +17,7 @@ from placer.check.conclusions import check_conclusions
 from placer.check.estimate import check_estimate
 from placer.check.figures import check_figures
 from placer.check.follow import Follower
+from placer.check.orders import check_orders
 from placer.check.places import check_places
 from placer.check.replay import check_replay
 from placer.check.rules import NAMES
@@ -69,6 +70,7 @@ def check_plan(
     if not walk.is_broken:
         check_figures(case, walk)
     check_conclusions(case)
+    check_orders(case)
     return _result(case.findings, notes)
 
 
