@@ -1,0 +1,1 @@
+"""When values are computed and cleaned up: reversible pebbling with real costs."""
