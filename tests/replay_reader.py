@@ -593,11 +593,17 @@ def _reset_first(source: Text) -> set[str]:
 
 
 def _reset_sites(placed: Text) -> set[int]:
-    return {
-        int(statement.split("$")[1])
-        for statement in placed.statements
-        if statement.startswith("reset")
-    }
+    """Return where what is reset started, swaps between physical qubits followed."""
+    started: dict[int, int] = {}
+    touched = set()
+    for statement in placed.statements:
+        if statement.startswith("reset"):
+            site = int(statement.split("$")[1])
+            touched.add(started.get(site, site))
+        elif statement.startswith("swap $"):
+            a, b = (int(n) for n in re.findall(r"\$(\d+)", statement))
+            started[a], started[b] = started.get(b, b), started.get(a, a)
+    return touched
 
 
 def _overlap(first: Run, second: Run, wires: list[str], placed: Text) -> str:

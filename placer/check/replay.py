@@ -146,9 +146,10 @@ class _Replay:
         if step.op.is_call and is_made_of_bits(step.built):
             self._coarse(step)
         else:
+            # Slots come back as they were: only the operands change.
             bits = list(got)
             meaning(step.op, bits, self.seed, self.heard)
-            for site, value in zip(step.where, bits, strict=True):
+            for site, value in zip(step.where[: len(bits)], bits, strict=True):
                 sites[site] = value
         gave = [sites[p] for p in step.where[: len(step.op.wires)]]
         self._compare(step, got, gave)

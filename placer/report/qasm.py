@@ -51,7 +51,7 @@ class PlacedStep:
 
 
 @dataclass(slots=True)
-class _Writer:
+class Writer:
     """The text under construction, and the names and bits that it has used."""
 
     bits: Mapping[str, str]
@@ -59,6 +59,11 @@ class _Writer:
     lines: list[str] = field(default_factory=list)
     cleanup_bits: int = 0
     used: set[str] = field(default_factory=set)
+
+    def bit(self, bit: str) -> str:
+        """Return a classical bit of the program as this text names it."""
+        name, bracket, rest = bit.partition("[")
+        return self.bits.get(name, name) + bracket + rest
 
 
 def placed_qasm(
@@ -135,11 +140,29 @@ def write_steps(
 
     `sites` maps a wire's name to its site, `head` holds comments for the top.
     """
-    taken: set[str] = set()
-    bits = {name: free_name(name, taken) for name, _ in program.bits}
-    writer = _Writer(bits, free_name("cleanup", taken))
+    writer = open_writer(program)
     for step in steps:
         _write_step(writer, step, sites, program, is_fine)
+    return framed(writer, steps, sites, program, head)
+
+
+def open_writer(program: Program) -> Writer:
+    """Return an empty text whose classical registers have names of their own."""
+    taken: set[str] = set()
+    bits = {name: free_name(name, taken) for name, _ in program.bits}
+    return Writer(bits, free_name("cleanup", taken))
+
+
+def framed(
+    writer: Writer,
+    steps: Sequence[PlacedStep],
+    sites: Mapping[str, int],
+    program: Program,
+    head: Sequence[str],
+    pragmas: Sequence[str] = (),
+) -> str:
+    """Return the whole text: header, layout, declarations, first resets, statements."""
+    bits = writer.bits
     top = ["OPENQASM 3.0;", *(f"// {_one_line(line)}" for line in head)]
     top.append('include "stdgates.inc";')
     # Pragmas of ours in a source describe that file, not this one.
@@ -155,6 +178,7 @@ def write_steps(
     renamed = " ".join(f"{old}={new}" for old, new in bits.items() if old != new)
     if renamed:
         top.append(f"pragma placer.renamed {renamed}")
+    top += pragmas
     top += [DEFINITIONS[name] for name in sorted(writer.used)]
     top += [_declare(bits[name], width) for name, width in program.bits]
     if writer.cleanup_bits:
@@ -166,7 +190,7 @@ def write_steps(
 
 
 def _write_step(
-    writer: _Writer,
+    writer: Writer,
     step: PlacedStep,
     sites: Mapping[str, int],
     program: Program,
@@ -174,9 +198,9 @@ def _write_step(
 ) -> None:
     op = step.operation
     here = [_site_of(program, sites, wire) for wire in op.wires]
-    kept = [_annotation(a) for a in op.annotations if "placer." not in a[:8]]
+    kept = [annotation(a) for a in op.annotations if "placer." not in a[:8]]
     if op.is_call and op.signature is None and step.built.level2_wires:
-        _title(writer, step)
+        add_title(writer, step)
         chosen = ",".join(f"${here[w]}" for w in step.built.level2_wires)
         writer.lines += [*kept, f"@placer.level2 sites={chosen}"]
         writer.lines.append(call_gate(op, here))
@@ -195,7 +219,7 @@ def _write_step(
     if not statements:
         return
     if op.is_call:
-        _title(writer, step)
+        add_title(writer, step)
     lenders = [lease.lender for lease in step.leases if lease.lender is not None]
     if is_whole:
         chosen = ",".join(f"${here[w]}" for w in step.built.level2_wires)
@@ -205,7 +229,8 @@ def _write_step(
     writer.lines += [*first, *statements[:-1], *last, statements[-1]]
 
 
-def _title(writer: _Writer, step: PlacedStep) -> None:
+def add_title(writer: Writer, step: PlacedStep) -> None:
+    """Add the comment that says which call and which recipe begin here."""
     op = step.operation
     where = f", line {op.place.line}" if op.place.line else ""
     inverse = " inverse" if op.inverse else ""
@@ -216,11 +241,11 @@ def _title(writer: _Writer, step: PlacedStep) -> None:
 
 
 def _statements(
-    writer: _Writer, op: Operation, circuit: Circuit, here: Sequence[int]
+    writer: Writer, op: Operation, circuit: Circuit, here: Sequence[int]
 ) -> list[str]:
     """Return the statements of one step; a run under one condition is one `if`."""
     if op.kind == "measure":
-        target = "" if op.bit is None else f"{_bit_text(writer, op.bit)} = "
+        target = "" if op.bit is None else f"{writer.bit(op.bit)} = "
         return [f"{target}measure ${here[0]};"]
     if op.kind == "barrier":
         return [f"barrier {', '.join(f'${site}' for site in here)};"]
@@ -237,8 +262,8 @@ def _statements(
             block.clear()
 
     for gate in circuit.ops:
-        text = _gate(writer, gate, here, base)
-        wanted = _condition(writer, gate, base)
+        text = statement_of(writer, gate, here, base)
+        wanted = condition_of(writer, gate, base)
         if wanted != condition:
             close()
             condition = wanted
@@ -247,16 +272,17 @@ def _statements(
     return statements
 
 
-def _condition(writer: _Writer, gate: Op, base: int) -> str | None:
+def condition_of(writer: Writer, gate: Op, base: int) -> str | None:
     """Return the bit that a gate waits for, as the file names it."""
     if gate.listens is not None:
-        return _bit_text(writer, gate.listens)
+        return writer.bit(gate.listens)
     if gate.condition is not None:
         return f"{writer.cleanup}[{base + gate.condition}]"
     return None
 
 
-def _gate(writer: _Writer, gate: Op, here: Sequence[int], base: int) -> str:
+def statement_of(writer: Writer, gate: Op, here: Sequence[int], base: int) -> str:
+    """Return the statement of one operation of a circuit at given sites."""
     qubits = [here[w] for w in gate.wires]
     if gate.name == "measure":
         return f"{writer.cleanup}[{base + (gate.bit or 0)}] = measure ${qubits[0]};"
@@ -303,11 +329,6 @@ def _site_of(program: Program, sites: Mapping[str, int], wire: int) -> int:
     return sites[name]
 
 
-def _bit_text(writer: _Writer, bit: str) -> str:
-    name, bracket, rest = bit.partition("[")
-    return writer.bits.get(name, name) + bracket + rest
-
-
 def _declare(name: str, width: int) -> str:
     return f"bit[{width}] {name};" if width else f"bit {name};"
 
@@ -318,7 +339,8 @@ def _pragma(text: str) -> str:
     return text.removeprefix("#") if is_whole else f"pragma {text}"
 
 
-def _annotation(text: str) -> str:
+def annotation(text: str) -> str:
+    """Return an annotation of the source on one line."""
     text = _one_line(text)
     return text if text.startswith("@") else f"@{text}"
 
