@@ -44,8 +44,7 @@ def swaps_of(text: str) -> list[tuple[int, int]]:
 
 
 def brought_home(text: str) -> str:
-    """Return the text with its swaps undone at the end: everything starts and ends
-    at the site that the layout names."""
+    """Return the text with its swaps undone at the end, as the layout names sites."""
     undone = [f"swap ${a}, ${b};" for a, b in reversed(swaps_of(text))]
     return text + "\n".join(undone) + "\n"
 
@@ -194,8 +193,7 @@ def test_the_command_writes_it(tmp_path: Any) -> None:
     target = tmp_path / "routed.qasm"
     done = CliRunner().invoke(
         main,
-        ["plan", "tide-gate", "-d", "slate-16", "--effort", "quick", "-q"]
-        + ["--routed", str(target)],
+        [*"plan tide-gate -d slate-16 --effort quick -q --routed".split(), str(target)],
     )
     assert done.exit_code == 0, done.output
     plan = placer.plan("tide-gate", "slate-16", effort="quick")
