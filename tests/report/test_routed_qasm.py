@@ -193,7 +193,19 @@ def test_the_command_writes_it(tmp_path: Any) -> None:
     target = tmp_path / "routed.qasm"
     done = CliRunner().invoke(
         main,
-        [*"plan tide-gate -d slate-16 --effort quick -q --routed".split(), str(target)],
+        [
+            *[
+                "plan",
+                "tide-gate",
+                "-d",
+                "slate-16",
+                "--effort",
+                "quick",
+                "-q",
+                "--routed",
+            ],
+            str(target),
+        ],
     )
     assert done.exit_code == 0, done.output
     plan = placer.plan("tide-gate", "slate-16", effort="quick")
