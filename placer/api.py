@@ -12,7 +12,8 @@ from placer.device.read import find_device
 from placer.errors import InternalError
 from placer.plan import Plan, to_json
 from placer.planner.assemble import plan_of
-from placer.planner.loop import Effort, run
+from placer.planner.loop import Effort
+from placer.planner.settle import Asked, settle
 from placer.problem import Goal, make_problem
 from placer.program.model import Program
 from placer.program.read import load_program, read_program
@@ -33,6 +34,7 @@ def plan(
     effort: Effort = "normal",
     seed: int = 0,
     open_inputs: bool = False,
+    cleanup: Asked = "optimised",
     progress: Callable[[str], None] = lambda _: None,
 ) -> Plan:
     """Plan a program on a device and return the checked plan.
@@ -53,6 +55,10 @@ def plan(
         Amount of work and seed of every random choice; same values, same plan.
     open_inputs
         Take every wire that is not declared workspace as unknown at the start.
+    cleanup
+        When the values of scopes are computed and cleaned up: the best order that was
+        found (`optimised`), the program's own (`as-written`), every value cleaned up
+        right after each use (`at-once`), or all of them at the end (`at-end`).
     progress
         Called with a short line at each stage.
 
@@ -74,8 +80,12 @@ def plan(
     if isinstance(budget, float | int):
         budget = dataclasses.replace(device.budget, share=float(budget))
     problem = make_problem(device, program, budget=budget, goal=goal, only=only)
-    outcome = run(problem, effort=effort, seed=seed, progress=progress)
-    result = plan_of(outcome, version=VERSION, seed=seed, effort=effort, notes=())
+    outcome, orders = settle(
+        problem, asked=cleanup, effort=effort, seed=seed, progress=progress
+    )
+    result = plan_of(
+        outcome, version=VERSION, seed=seed, effort=effort, notes=(), cleanup=orders
+    )
     progress("check")
     verified = check_plan(to_json(result), "plan")
     if not verified.ok:

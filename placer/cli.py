@@ -34,6 +34,7 @@ from placer.errors import (
     did_you_mean,
 )
 from placer.plan import POLICIES, to_json
+from placer.program.planned import planned_program
 from placer.report.outputs import STDOUT, check_targets, write_all
 from placer.report.progress import Progress
 from placer.report.sorts import demo_programs, sort_of
@@ -142,6 +143,13 @@ def _finite(
     help="Allow only this kind of workspace (repeatable).",
 )
 @click.option(
+    "--cleanup",
+    type=click.Choice(["optimised", "as-written", "at-once", "at-end"]),
+    default="optimised",
+    show_default=True,
+    help="When values of scopes are cleaned up.",
+)
+@click.option(
     "--open-inputs",
     is_flag=True,
     help="Take every wire that is not declared scratch as unknown at the start.",
@@ -149,6 +157,12 @@ def _finite(
 @click.option("--plan", "plan_file", metavar="FILE", help="Write the plan as JSON.")
 @click.option(
     "--qasm", "qasm_file", metavar="FILE", help="Write placed OpenQASM 3, unrouted."
+)
+@click.option(
+    "--routed",
+    "routed_file",
+    metavar="FILE",
+    help="Write OpenQASM 3 with the swaps of the included route.",
 )
 @click.option(
     "--gates",
@@ -168,6 +182,7 @@ def plan(
     most_sites: int | None,
     plan_file: str | None,
     qasm_file: str | None,
+    routed_file: str | None,
     gates: str,
     as_json: bool,
     quiet: bool,
@@ -178,7 +193,8 @@ def plan(
     PROGRAM is an OpenQASM 2 or 3 file, a program YAML file, or the name of a demo
     program.  A FILE of '-' is standard output.
     """
-    targets = [name for name in (plan_file, qasm_file) if name is not None]
+    files = (plan_file, qasm_file, routed_file)
+    targets = [name for name in files if name is not None]
     _one_on_stdout(targets, as_json=as_json)
     check_targets(targets, (program, device))
     source, chosen = _read_both(program, device, open_inputs=options["open_inputs"])
@@ -191,11 +207,17 @@ def plan(
     texts: dict[str, str] = {}
     if plan_file is not None:
         texts[plan_file] = to_json(found)
+    moves = () if found.cleanup is None else found.cleanup.moves
+    planned = planned_program(source, moves, chosen)
     if qasm_file is not None:
         from placer.report.qasm import placed_qasm
 
         level = cast("Gates", gates)
-        texts[qasm_file] = placed_qasm(found, source, chosen, gates=level)
+        texts[qasm_file] = placed_qasm(found, planned, chosen, gates=level)
+    if routed_file is not None:
+        from placer.report.routed import routed_qasm
+
+        texts[routed_file] = routed_qasm(found, planned, chosen)
     _put(texts, found, as_json=as_json, quiet=quiet)
     if not found.verdict.fits:
         _exit(NoPlan.exit_code)
@@ -221,7 +243,7 @@ def _one_on_stdout(targets: Sequence[str], *, as_json: bool) -> None:
     if targets.count(STDOUT) + as_json > 1:
         raise click.UsageError(
             "standard output has room for one result: only one of --json, --plan -, "
-            "--qasm - can use it"
+            "--qasm -, --routed - can use it"
         )
 
 

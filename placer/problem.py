@@ -63,9 +63,10 @@ def make_problem(
     budget = device.budget if budget is None else budget
     only = tuple(sorted(set(only)))
     _need_room(device, program)
-    choices = tuple(_choices(op, device, program, only) for op in program.operations)
+    choices = tuple(choices_for(op, device, program, only) for op in program.operations)
     digest = hashlib.sha256()
-    for part in (device.hash, program.hash, repr(budget), goal, repr(only)):
+    moves = repr(program.moves)
+    for part in (device.hash, program.hash, moves, repr(budget), goal, repr(only)):
         digest.update(part.encode() + b"\0")
     return Problem(device, program, budget, goal, only, choices, digest.hexdigest())
 
@@ -156,9 +157,16 @@ def _wires_always_held(program: Program) -> int:
     )
 
 
-def _choices(
+def choices_for(
     op: Operation, device: Device, program: Program, only: Sequence[str]
 ) -> tuple[Built, ...]:
+    """Return the recipes that a step may use on a device.
+
+    Raises
+    ------
+    NoPlan
+        If none is left.
+    """
     candidates = every_recipe(op)
     if not op.is_call:
         return candidates

@@ -11,11 +11,18 @@ from placer.planner.placement import evaluate
 from placer.planner.verdict import nearest_change, overrun, verdict_of
 
 if TYPE_CHECKING:
+    from placer.plan import Cleanup
     from placer.planner.loop import Outcome, PolicyOutcome
 
 
 def plan_of(
-    outcome: Outcome, *, version: str, seed: int, effort: str, notes: tuple[str, ...]
+    outcome: Outcome,
+    *,
+    version: str,
+    seed: int,
+    effort: str,
+    notes: tuple[str, ...],
+    cleanup: Cleanup | None = None,
 ) -> Plan:
     """Return the plan of an outcome, ready to be written and checked."""
     problem = outcome.instance.problem
@@ -55,6 +62,7 @@ def plan_of(
         policies=tuple(_row(p, outcome) for p in outcome.policies),
         verdict=verdict_of(judged.figures, budget, nearest),
         notes=(*_why(outcome), *notes),
+        cleanup=cleanup,
     )
 
 

@@ -65,12 +65,14 @@ class ValueGraph:
     """Values and uses of a program.
 
     `held[step]` maps each workspace wire that a step touches to the value it belongs
-    to there, and its place among the wires of that value.
+    to there, and its place among the wires of that value.  `written` is the program's
+    own order: (`compute`, `uncompute` or `use`, number).
     """
 
     values: tuple[Value, ...]
     uses: tuple[Use, ...]
     held: Mapping[int, Mapping[int, tuple[int, int]]]
+    written: tuple[tuple[str, int], ...] = ()
 
 
 def values_of(program: Program) -> ValueGraph:
@@ -111,7 +113,52 @@ def values_of(program: Program) -> ValueGraph:
         )
         for k, n in enumerate(first)
     )
-    return ValueGraph(values, uses, held)
+    order = _written(program, found, value_of, values, uses)
+    return ValueGraph(values, uses, held, order)
+
+
+def _written(
+    program: Program,
+    found: Makings,
+    value_of: Sequence[int],
+    values: Sequence[Value],
+    uses: Sequence[Use],
+) -> tuple[tuple[str, int], ...]:
+    """Return the order of the source, each value there once at a time."""
+    moves: list[tuple[str, int]] = []
+    there: dict[int, int] = {}
+    made = {making.steps[0]: value_of[n] for n, making in enumerate(found.makings)}
+    first_of = {use.steps[0]: k for k, use in enumerate(uses)}
+    cleaned: dict[int, list[int]] = {}
+    for n, making in enumerate(found.makings):
+        begin = program.scopes[making.scope].cleanup[0]
+        cleaned.setdefault(begin, []).append(value_of[n])
+
+    def compute(value: int) -> None:
+        there[value] = there.get(value, 0) + 1
+        if there[value] == 1:
+            moves.append(("compute", value))
+
+    def clean(value: int) -> None:
+        if there[value] > 1:
+            there[value] -= 1
+            return
+        again = [i for i in values[value].inputs if not there.get(i)]
+        for i in again:
+            compute(i)
+        there[value] = 0
+        moves.append(("uncompute", value))
+        for i in reversed(again):
+            clean(i)
+
+    for index in range(len(program.operations) + 1):
+        for value in reversed(cleaned.get(index, ())):
+            clean(value)
+        if index in made:
+            compute(made[index])
+        if index in first_of:
+            moves.append(("use", first_of[index]))
+    return tuple(moves)
 
 
 def _windows(program: Program, found: Makings) -> list[tuple[int, int]]:
