@@ -81,6 +81,7 @@ class Tables:
     hop: Ints
     moves: Ints
     _pairs: dict[Mask, tuple[Ints, Ints]] = field(default_factory=dict, repr=False)
+    _floors: dict[bool, int] = field(default_factory=dict, repr=False)
 
     @property
     def far(self) -> int:
@@ -99,8 +100,10 @@ class Tables:
 
     def gate_floor(self, mask: Mask) -> int:
         """Return the cost of the cheapest gate of this kind anywhere."""
-        table = self.two2 if mask[0] else self.two
-        return int(table[table >= 0].min(initial=FAR_COST))
+        if mask[0] not in self._floors:
+            table = self.two2 if mask[0] else self.two
+            self._floors[mask[0]] = int(table[table >= 0].min(initial=FAR_COST))
+        return self._floors[mask[0]]
 
     def pair(self, mask: Mask) -> tuple[Ints, Ints]:
         """Return cost and moves of a gate between any two sites, as (pair, away).

@@ -9,9 +9,6 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
-    import numpy as np
-    from numpy.typing import NDArray
-
     from placer.planner.placement import Instance
     from placer.planner.profile import Profile
 
@@ -26,8 +23,9 @@ def floor_of_error(instance: Instance, recipes: Choice) -> int:
 
     Every plan does the gates and measurements of one recipe per step somewhere.
     """
+    least = _Least(instance)
     return sum(
-        min(_gates(instance, instance.profiles[step][c]) for c in recipes[step])
+        min(least.gates(instance.profiles[step][c]) for c in recipes[step])
         for step in range(instance.steps)
     )
 
@@ -38,22 +36,18 @@ def least_estimate(instance: Instance, recipes: Choice) -> int:
     Adds to the gates: the slots' own decay at the best site, and for wires held from
     the start to the end the longest chain of base durations at the best site.
     """
-    rates = [int(instance.tables.rate[p]) for p in instance.usable]
-    rate = min(rates)
+    least = _Least(instance)
+    rate = least.rate
     total = 0
-    for step in range(instance.steps):
-        total += min(
-            _gates(instance, instance.profiles[step][c])
-            + _slots(instance, instance.profiles[step][c], rate)
-            for c in recipes[step]
-        )
+    for step, row in enumerate(instance.profiles):
+        total += min(least.gates(row[c]) + least.slots(row[c]) for c in recipes[step])
     begins, chain = _chains(instance, recipes)
     for w, wire in enumerate(instance.wires):
         if not wire.uses:
             total += 0 if wire.is_known_zero else rate * chain
             continue
         if wire.is_known_zero:
-            total += min(int(instance.tables.prep[p]) for p in instance.usable)
+            total += least.prep
             total += rate * _own_length(instance, recipes, w)
         elif wire.ends_known:
             last = wire.uses[-1]
@@ -66,31 +60,43 @@ def least_estimate(instance: Instance, recipes: Choice) -> int:
 def cheapest_first(instance: Instance, step: int) -> list[int]:
     """Return a step's recipes by their gates on the best sites, cheapest first."""
     row = instance.profiles[step]
-    return sorted(range(len(row)), key=lambda c: (_gates(instance, row[c]), c))
+    least = _Least(instance)
+    return sorted(range(len(row)), key=lambda c: (least.gates(row[c]), c))
 
 
-def _gates(instance: Instance, profile: Profile) -> int:
-    tables = instance.tables
-    usable = instance.usable
+class _Least:
+    """The least price of each kind of operation over the sites in service."""
 
-    def least(row: NDArray[np.int64]) -> int:
-        return min(int(row[p]) for p in usable)
+    def __init__(self, instance: Instance) -> None:
+        self.tables = instance.tables
+        usable = list(instance.usable)
+        self.one = int(self.tables.one[usable].min())
+        self.tee = int(self.tables.tee[usable].min())
+        self.read = int(self.tables.read[usable].min())
+        self.wipe = int(self.tables.wipe[usable].min())
+        self.prep = int(self.tables.prep[usable].min())
+        self.rate = int(self.tables.rate[usable].min())
+        self.known: dict[int, int] = {}
 
-    total = sum(pair.count * tables.gate_floor(pair.mask) for pair in profile.pairs)
-    total += sum(profile.ones) * least(tables.one)
-    total += sum(profile.tees) * least(tables.tee)
-    total += sum(profile.reads) * least(tables.read)
-    total += sum(profile.wipes) * least(tables.wipe)
-    return total
+    def gates(self, profile: Profile) -> int:
+        """Return what a recipe's operations cost at least, wherever they happen."""
+        if id(profile) not in self.known:
+            floor = self.tables.gate_floor
+            total = sum(pair.count * floor(pair.mask) for pair in profile.pairs)
+            total += sum(profile.ones) * self.one
+            total += sum(profile.tees) * self.tee
+            total += sum(profile.reads) * self.read
+            total += sum(profile.wipes) * self.wipe
+            self.known[id(profile)] = total
+        return self.known[id(profile)]
 
-
-def _slots(instance: Instance, profile: Profile, rate: int) -> int:
-    total = 0
-    for slot, kind in enumerate(profile.built.slots):
-        if kind == "clean":
-            total += rate * profile.live_ns[slot]
-            total += min(int(instance.tables.prep[p]) for p in instance.usable)
-    return total
+    def slots(self, profile: Profile) -> int:
+        """Return what a recipe's clean slots cost at least."""
+        return sum(
+            self.rate * profile.live_ns[slot] + self.prep
+            for slot, kind in enumerate(profile.built.slots)
+            if kind == "clean"
+        )
 
 
 def _shortest(instance: Instance, recipes: Choice, step: int) -> int:

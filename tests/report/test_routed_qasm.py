@@ -191,22 +191,8 @@ def test_a_broken_route_is_not_written(how: str) -> None:
 
 def test_the_command_writes_it(tmp_path: Any) -> None:
     target = tmp_path / "routed.qasm"
-    done = CliRunner().invoke(
-        main,
-        [
-            *[
-                "plan",
-                "tide-gate",
-                "-d",
-                "slate-16",
-                "--effort",
-                "quick",
-                "-q",
-                "--routed",
-            ],
-            str(target),
-        ],
-    )
+    words = ["plan", "tide-gate", "-d", "slate-16", "--effort", "quick", "-q"]
+    done = CliRunner().invoke(main, [*words, "--routed", str(target)])
     assert done.exit_code == 0, done.output
     plan = placer.plan("tide-gate", "slate-16", effort="quick")
     is_sound(target.read_text(), plan, find_device("slate-16"))
