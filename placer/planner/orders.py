@@ -168,32 +168,73 @@ def _length(program: Program, steps: Sequence[int], price: Pricing) -> int:
 
 
 def orders_of(
-    game: Game, graph: ValueGraph, effort: Effort
+    program: Program, game: Game, graph: ValueGraph, effort: Effort
 ) -> tuple[list[Order], tuple[Answer, ...]]:
     """Return the orders to plan, each once, and the curve of least costs.
 
     The program's own order comes first, then the two extremes, then the curve from
-    few wires to many; an order that is there already is not listed again.
+    few wires to many; an order that is there already, but for moves that have nothing
+    to do with each other, is not listed again.
     """
     answers = curve(game, effort)
     written = tuple(graph.written)
     orders = [Order(AS_WRITTEN, (), *_size(game, written))]
-    seen = {written}
+    touched = _touched(program, graph)
+    seen = {_normal(written, touched)}
     named = [(AT_ONCE, at_once(game)), (AT_END, at_end(game))]
     named += [(f"within {a.peak} wires", a) for a in answers]
     for name, answer in named:
         if answer.moves is None:
             continue
         moves = tuple((str(m.action), m.number) for m in answer.moves)
-        if moves in seen:
+        normal = _normal(moves, touched)
+        if normal in seen:
             continue
-        seen.add(moves)
+        seen.add(normal)
         taken = {order.name for order in orders}
         if name in taken:
             continue
         own = tuple(Move(m.action, m.number) for m in answer.moves)
         orders.append(Order(name, own, *_size(game, moves)))
     return orders, answers
+
+
+Touched = dict[tuple[bool, int], frozenset[object]]
+
+
+def _touched(program: Program, graph: ValueGraph) -> Touched:
+    """Return what each use and each value touches: wires, and values by number."""
+    rows: Touched = {}
+    for is_use, number, steps in (
+        *((True, k, use.steps) for k, use in enumerate(graph.uses)),
+        *((False, k, value.steps) for k, value in enumerate(graph.values)),
+    ):
+        things: set[object] = set() if is_use else {("value", number)}
+        for step in steps:
+            held = graph.held[step]
+            for wire in program.operations[step].wires:
+                things.add(("value", held[wire][0]) if wire in held else int(wire))
+        rows[is_use, number] = frozenset(things)
+    return rows
+
+
+def _normal(
+    moves: Sequence[tuple[str, int]], touched: Touched
+) -> tuple[tuple[tuple[str, int], ...], ...]:
+    """Return the moves in layers: each as early as what it shares things with allows.
+
+    Orders with the same layers give the same program.
+    """
+    layer_of: dict[object, int] = {}
+    layers: list[list[tuple[str, int]]] = []
+    for action, number in moves:
+        things = touched[action == "use", number]
+        layer = max((layer_of.get(thing, 0) for thing in things), default=0)
+        if layer == len(layers):
+            layers.append([])
+        layers[layer].append((action, number))
+        layer_of.update(dict.fromkeys(things, layer + 1))
+    return tuple(tuple(sorted(layer)) for layer in layers)
 
 
 def _size(game: Game, moves: Sequence[tuple[str, int]]) -> tuple[int, int]:

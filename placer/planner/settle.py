@@ -2,7 +2,7 @@
 
 In: a problem as written and what was asked for.  Out: the engine's outcome for the
 order taken, and what became of the values.  All orders are planned with little work
-first; the best of them, and those that a reader compares with, again with all of it.
+first, the best of them again with all of it; deep, also those a reader compares with.
 """
 
 from __future__ import annotations
@@ -67,7 +67,7 @@ def settle(
         return run(problem, effort=effort, seed=seed, progress=progress), None
     progress("cleanup: least cost for each number of wires")
     game = game_of(problem.program, graph, problem.device, problem.only)
-    orders, curve = orders_of(game, graph, effort)
+    orders, curve = orders_of(problem.program, game, graph, effort)
     wanted = _asked_for(orders, asked)
     runner = _Runner(problem, seed, progress)
     if len(wanted) == 1:
@@ -107,7 +107,8 @@ def _all_of(runner: _Runner, orders: Sequence[Order], effort: Effort) -> list[Tr
         return quick
     ranked = sorted(quick, key=_rank)
     chosen = {t.order.name for t in ranked[: AGAIN[effort]] if t.outcome is not None}
-    chosen.update(name for name in COMPARED if name in {o.name for o in orders})
+    if effort == "deep":
+        chosen.update(name for name in COMPARED if name in {o.name for o in orders})
     return [
         runner.plan(t.order, effort) if t.order.name in chosen else t for t in quick
     ]
