@@ -66,6 +66,24 @@ def _fixed(game: Game, *, is_eager: bool, by: str) -> Answer:
     return Answer(peak, moves, cost, None, False, by, peak)
 
 
+def _inputs_first(game: Game) -> list[int]:
+    """Return the values so that each comes after what it is computed from."""
+    order: list[int] = []
+    done: set[int] = set()
+    for root in range(len(game.values)):
+        waiting = [root]
+        while waiting:
+            v = waiting[-1]
+            missing = [i for i in game.values[v].inputs if i not in done]
+            waiting += missing
+            if not missing:
+                waiting.pop()
+                if v not in done:
+                    done.add(v)
+                    order.append(v)
+    return order
+
+
 @dataclass(slots=True)
 class _Run:
     """One run: what is there, what has been done, and how taste decides."""
@@ -81,6 +99,25 @@ class _Run:
     calls: int = 0
     is_eager: bool = False
     keeps_all: bool = False
+    depth: list[int] = field(default_factory=list)
+    wanted: list[int] = field(default_factory=list)
+
+    def __post_init__(self) -> None:
+        """Find how much lies below each value, and what each target needs somehow."""
+        values = self.game.values
+        below = [0] * len(values)
+        self.depth = [0] * len(values)
+        for v in _inputs_first(self.game):
+            below[v] = 1 << v
+            for i in values[v].inputs:
+                below[v] |= below[i]
+                self.depth[v] = max(self.depth[v], self.depth[i])
+            self.depth[v] += 1
+        for target in self.game.targets:
+            mask = 0
+            for v in target.needs:
+                mask |= below[v]
+            self.wanted.append(mask)
 
     def play(self) -> tuple[Move, ...] | None:
         """Return the moves of a whole game, `None` where it gets stuck."""
@@ -102,9 +139,7 @@ class _Run:
         return tuple(self.moves)
 
     def _depth(self, value: int) -> int:
-        return 1 + max(
-            (self._depth(i) for i in self.game.values[value].inputs), default=0
-        )
+        return self.depth[value]
 
     def _held(self) -> int:
         return sum(self.game.values[v].size for v in self.live)
@@ -172,15 +207,8 @@ class _Run:
     def _next_need(self, value: int) -> float:
         """Return how many targets lie before the next that needs a value somehow."""
         for number in range(self.passed, len(self.game.targets)):
-            wanted = list(self.game.targets[number].needs)
-            seen = set()
-            while wanted:
-                v = wanted.pop()
-                if v == value:
-                    return float(number - self.passed)
-                if v not in seen and v not in self.live:
-                    seen.add(v)
-                    wanted.extend(self.game.values[v].inputs)
+            if self.wanted[number] >> value & 1:
+                return float(number - self.passed)
         return float(len(self.game.targets) + 1)
 
     def _remove(self, value: int, pinned: frozenset[int], depth: int) -> bool:
