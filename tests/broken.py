@@ -18,6 +18,7 @@ from placer.check.verify import check_plan
 from placer.device.read import read_device
 from placer.program.read import read_program
 from tests import broken_sources
+from tests.broken_cleanup import CLEANUP_BREAKERS, CLEANUP_FOLLOWS
 from tests.broken_sources import (
     Data,
     calls_with,
@@ -428,6 +429,8 @@ def function_differs(data: Data, draw: random.Random) -> Data | None:
 def workspace_not_returned(data: Data, draw: random.Random) -> Data | None:
     source = data["program"]
     program = read_program(source["text"], source["path"])
+    if data.get("cleanup", {}).get("moves"):
+        return None
     steps: dict[int, list[int]] = {}
     for op in program.operations:
         for wire in op.wires:
@@ -489,6 +492,7 @@ def swap_while_level2(data: Data, draw: random.Random) -> Data | None:
 
 
 BREAKERS: dict[str, Breaker] = {
+    **CLEANUP_BREAKERS,
     "plan-malformed": malformed,
     "source-changed": source_changed,
     "header-misstated": header_misstated,
@@ -560,6 +564,7 @@ _WITHOUT_LEVEL2 = {
 }
 
 FOLLOWS: dict[str, set[str]] = {
+    **CLEANUP_FOLLOWS,
     "site-out-of-service": _MOVED | {"link-out-of-reach"},
     # Without a latency, or of another length, everything takes another time.
     "capability-missing": {
@@ -600,8 +605,14 @@ FOLLOWS: dict[str, set[str]] = {
     "route-incomplete": {"route-off-link"},
     "swap-while-level2": {"level2-off-link", "route-off-link"},
     # The limits repeat some figures, and the success sums them up.
-    "figures-misstated": {"limit-misstated", "success-misstated"},
-    "share-misstated": {"limit-misstated"},
+    "figures-misstated": {
+        "cleanup-misstated",
+        "limit-misstated",
+        "success-misstated",
+    },
+    "share-misstated": {"cleanup-misstated", "limit-misstated"},
+    # The row of the order that was taken repeats the figures.
+    "success-misstated": {"cleanup-misstated"},
     # A circuit that is wrong at one level or both.
     "slot-not-returned": {"recipe-wrong", *_MOVED},
     "borrowed-changed": {"recipe-wrong", *_MOVED},

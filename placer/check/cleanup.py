@@ -250,6 +250,9 @@ def _phase(
         held[op.wires[0]] = got[0]
     elif op.kind == "measure":
         return gave[0] & held.pop(op.wires[0], 0)
+    elif op.kind == "reset":
+        # Turned and reset unmeasured: a phase that nobody has written down.
+        return held.pop(op.wires[0], 0)
     elif op.name == "z" and op.condition is not None:
         return outcomes.get(op.condition, 0) & got[0] & ALL_ON
     return 0

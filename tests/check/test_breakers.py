@@ -4,18 +4,23 @@ from __future__ import annotations
 
 import json
 import random
+import sys
 from typing import Any
 
 import pytest
 
 import placer
+from placer.check.cleanup import follow_moves
 from placer.check.rules import NAMES, RULES
 from placer.check.verify import check_plan
+from placer.program.planned import planned_program
 from placer.program.read import read_program
 from placer.recipes import catalog
 from placer.recipes.circuit import Built
 from tests.broken import BREAKERS, FOLLOWS
+from tests.broken_cleanup import REWRITE_BREAKERS
 from tests.broken_sources import RECIPE_BREAKERS
+from tests.check.cleanup_sample import reordered
 
 MIXED = """OPENQASM 2.0;
 include "qelib1.inc";
@@ -58,6 +63,7 @@ cp(pi/4) a[0], a[2];
 c[0] = measure a[0];
 """
 
+CLEANUP = sys.modules[follow_moves.__module__]
 CASES = {
     "clean": ("tide-gate", "slate-16"),
     "borrowed": ("full-berths", "tuff-10"),
@@ -69,7 +75,9 @@ CASES = {
     "split": (SPLIT, "slate-16"),
 }
 ONLY = {"split": ("clean",)}
-SEEDS = 2  # per rule and plan; eight plans
+# In another order its value would live short enough.
+CLEANUP_ORDER: dict[str, Any] = {"misfit": "as-written"}
+SEEDS = 2  # per rule and plan; nine plans
 
 
 @pytest.fixture(scope="session")
@@ -80,8 +88,10 @@ def good() -> dict[str, dict[str, Any]]:
         if "\n" in program:
             source = read_program(program, f"{name}.qasm")
         only = ONLY.get(name, ())
-        plan = placer.plan(source, device, effort="quick", only=only)
+        order = CLEANUP_ORDER.get(name, "optimised")
+        plan = placer.plan(source, device, effort="quick", only=only, cleanup=order)
         plans[name] = json.loads(placer.to_json(plan))
+    plans["reordered"] = json.loads(reordered())
     return plans
 
 
@@ -151,9 +161,25 @@ def spoils(rule: str, data: dict[str, Any], chosen: int, draw: random.Random) ->
     return bool(done)
 
 
+@pytest.mark.parametrize("rule", sorted(REWRITE_BREAKERS))
+def test_every_spoiled_order_is_named(
+    rule: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    for seed in range(12):
+        draw = random.Random(f"{rule} {seed}")
+
+        def spoiled(*arguments: Any, draw: random.Random = draw) -> Any:
+            return REWRITE_BREAKERS[rule](planned_program(*arguments), draw)
+
+        monkeypatch.setattr(CLEANUP, "planned_program", spoiled)
+        named = {finding.rule for finding in check_plan(reordered()).findings}
+        assert named == {rule}, seed
+
+
 def test_every_rule_has_one_breaker() -> None:
-    assert sorted(NAMES) == sorted([*BREAKERS, *RECIPE_BREAKERS])
-    assert len(NAMES) == len(BREAKERS) + len(RECIPE_BREAKERS)
+    broken = [*BREAKERS, *RECIPE_BREAKERS, *REWRITE_BREAKERS]
+    assert sorted(NAMES) == sorted(broken)
+    assert len(NAMES) == len(broken)
     assert set(FOLLOWS) <= set(NAMES)
     assert set().union(*FOLLOWS.values()) <= set(NAMES)
     assert all(rule.sentence and rule.sentence[0].islower() for rule in RULES)

@@ -5,22 +5,28 @@ from __future__ import annotations
 import dataclasses
 import json
 import math
+import sys
 from collections.abc import Callable
 from typing import Any
 
 import pytest
 
+from placer.check.cleanup import follow_moves
 from placer.check.rules import NAMES
 from placer.check.verify import check_plan
 from placer.device.read import read_device
+from placer.program.model import Program
+from placer.program.planned import planned_program
 from placer.program.read import read_program
 from placer.recipes import catalog
 from placer.recipes.circuit import Built, Op
 from placer.units import cost_of_error
+from tests.check.cleanup_sample import reordered
 from tests.check.handmade import make
 from tests.check.samples import ABLE, CALLS, FULL, GRID, HEAD, SCOPE, SITES, device
 
 Data = dict[str, Any]
+CLEANUP = sys.modules[follow_moves.__module__]
 
 # Two wires at the ends of three sites.  h takes 30 ns; the cx is one link away: it is
 # planned with 50 ns + 1 * ceil(3 * 50 / 4) = 88 ns.  The route swaps (0, 1) first.
@@ -137,7 +143,41 @@ EARLY_SWAP = {"gaps": [[], [[0, 2]]], "swaps": [[0, 1]]}
 MID_SWAP = {"gaps": [[[0, 0]], [[1, 2]]], "swaps": [[0, 1]]}
 ROUTE = {"held_out": 0, "expected_swaps": -1.0}
 
+# u0 u1 u2 c0 c1 d0 c2 u3 d2 u4 c0 u5 d0 c2 u6 u2 c0 u1 u0 u7: the order of the sample;
+# use 3 reads v[2], use 5 v[0]; use 7 is the h on a[2], which v[1] is computed from.
+ORDER = reordered()
+
+
+def move(place: int, *new: object) -> Callable[[Data], object]:
+    def edit(data: Data) -> None:
+        data["cleanup"]["moves"][place : place + 1] = [list(one) for one in new]
+
+    return edit
+
+
 EDITS: dict[str, tuple[str, Callable[[Data], object], str]] = {
+    "cleanup-unreadable": (ORDER, move(2, ("use", 4)), "use 4 comes where use 2"),
+    "value-read-dead": (
+        ORDER,
+        move(4),
+        "'compute' of 's_1.v[2]' (line 13) reads 's_1.v[1]' (line 12), which is not",
+    ),
+    "cleanup-input-changed": (
+        ORDER,
+        lambda d: d["cleanup"]["moves"].append(d["cleanup"]["moves"].pop(17)),
+        "'uncompute' of 's_1.v[1]' (line 12) comes after line 19, which changes what",
+    ),
+    "record-open": (
+        ORDER,
+        move(18, ("drop", 0)),
+        "measured by move 18 and never fixed",
+    ),
+    "value-left": (ORDER, move(18), "'s_1.v[0]' (line 11) is never cleaned up"),
+    "cleanup-misstated": (
+        ORDER,
+        lambda d: d["cleanup"]["values"][0].update(computed=9),
+        "computed 9 and dropped 2 times, the moves say (3, 2)",
+    ),
     "plan-malformed": (TINY, put("budget", "share", None), "None is not"),
     "source-changed": (TINY, put("device", "hash", "00"), "'00' is stated"),
     "header-misstated": (TINY, put("calibrated", "2026-01-06"), "2026-01-05"),
@@ -295,5 +335,26 @@ def test_a_wrong_recipe_is_told(rule: str) -> None:
     assert any(words in what for what in told), told
 
 
+def test_a_fix_that_is_forgotten_leaves_a_phase(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    def without_fix(*arguments: Any) -> Program:
+        program = planned_program(*arguments)
+        fix = next(op for op in program.operations if op.condition and op.name == "z")
+        kept = [op for op in program.operations if op is not fix]
+        return dataclasses.replace(
+            program,
+            operations=tuple(
+                dataclasses.replace(op, index=n) for n, op in enumerate(kept)
+            ),
+        )
+
+    monkeypatch.setattr(CLEANUP, "planned_program", without_fix)
+    told = [(f.rule, f.what) for f in check_plan(ORDER).findings]
+    text = "the records leave a phase that depends on a value"
+    assert told == [("cleanup-differs", text)]
+
+
 def test_every_rule_has_one_hand_made_test() -> None:
-    assert sorted(NAMES) == sorted([*EDITS, *SPOILED])
+    others = ["cleanup-differs"]
+    assert sorted(NAMES) == sorted([*EDITS, *SPOILED, *others])

@@ -1,8 +1,8 @@
 """Sixty values and limits that bind: a set of generated games, kept by its seeds.
 
-Three families: binary trees, chains of blocks (twenty blocks of three
-values, each block read by the next and every fifth by a target), and random graphs whose
-values read up to three of the twelve before them.  Costs 5 to 20, sizes 1 to 3.
+Three families: binary trees, chains of blocks (twenty blocks of three values, each
+read by the next and every fifth by a target), and random graphs whose values read up to
+three of the twelve before them.  Costs 5 to 20, sizes 1 to 3.
 """
 
 from __future__ import annotations
