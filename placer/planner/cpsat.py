@@ -8,14 +8,22 @@ from typing import Any
 from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
+from placer.planner.halt import NEVER, Halt, watched
 
 
 class Run:
     """A solver for one model whose objective lacks a constant."""
 
     def __init__(
-        self, model: cp_model.CpModel, constant: int, *, seed: int, workers: int
+        self,
+        model: cp_model.CpModel,
+        constant: int,
+        *,
+        seed: int,
+        workers: int,
+        halt: Halt = NEVER,
     ) -> None:
+        self.halt = halt
         self.model = model
         self.constant = constant
         self.solver = cp_model.CpSolver()
@@ -25,12 +33,20 @@ class Run:
         parameters.interleave_search = workers > 1
         # Measured: full linear relaxations prove most.
         parameters.linearization_level = 2
+        # An interruption is ours to take: what was found must still be checked.
+        parameters.catch_sigint_signal = False
 
     def solve(self, work: float, *, by_bound: bool) -> Any:
         """Search within a deterministic amount of work and return the status."""
         self.solver.parameters.max_deterministic_time = work
         self.solver.parameters.optimize_with_lb_tree_search = by_bound
-        status = self.solver.solve(self.model)
+        found: list[Any] = []
+        watched(
+            self.halt,
+            lambda: found.append(self.solver.solve(self.model)),
+            self.solver.stop_search,
+        )
+        status = found[0]
         if status == cp_model.MODEL_INVALID:
             info = self.solver.solution_info()
             raise InternalError(f"the joint model is invalid: {info}")

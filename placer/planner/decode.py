@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from placer.planner.halt import NEVER, Halt
 from placer.planner.placement import (
     Instance,
     Misfit,
@@ -29,6 +30,8 @@ if TYPE_CHECKING:
 
     from placer.planner.profile import Mask, Profile
 
+STEPS_PER_LOOK = 64
+"""Steps after which a decoding asks whether it must halt."""
 HARD = 1e17
 """A price no real choice reaches; marks sites that cannot be used."""
 
@@ -81,6 +84,8 @@ def decode(
     sites: Sequence[int],
     taste: Taste,
     earlier: Placement | None = None,
+    *,
+    halt: Halt = NEVER,
 ) -> Placement:
     """Return a placement whose permanent wires sit at `sites`.
 
@@ -90,9 +95,9 @@ def decode(
     Raises
     ------
     Misfit
-        If some step finds no recipe with room for its workspace.
+        If some step finds no recipe with room for its workspace, or the halt is due.
     """
-    return _Decoder(instance, taste, earlier).run(sites)
+    return _Decoder(instance, taste, earlier).run(sites, halt)
 
 
 def alternatives(
@@ -153,10 +158,12 @@ class _Decoder:
                 state.reserved[sites[w]] = w
         return state
 
-    def run(self, sites: Sequence[int]) -> Placement:
+    def run(self, sites: Sequence[int], halt: Halt) -> Placement:
         """Place every step in program order."""
         state = self._begin(sites)
         for step in range(self.instance.steps):
+            if step % STEPS_PER_LOOK == 0 and halt.is_due():
+                raise Misfit("the work must end")
             self._place_new_wires(state, step)
             self._commit(state, step, self._best(state, step))
         return Placement(

@@ -14,6 +14,7 @@ from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
 from placer.planner.cpsat import Run
+from placer.planner.halt import NEVER, Halt
 from placer.planner.model import JointModel, Open, everything, size_of
 from placer.planner.placement import (
     Instance,
@@ -48,6 +49,7 @@ def solve(
     seed: int,
     hint: Placement | None = None,
     workers: int = 1,
+    halt: Halt = NEVER,
 ) -> Answer:
     """Solve the joint model within a deterministic amount of work.
 
@@ -60,7 +62,7 @@ def solve(
     InternalError
         If the model is invalid, or a solution does not survive its re-costing.
     """
-    return _Solve(instance, choice, seed, workers).run(work, hint)
+    return _Solve(instance, choice, seed, workers, halt).run(work, hint)
 
 
 LARGEST_MODEL = 300_000
@@ -73,8 +75,14 @@ class _Solve:
     """The best placement and the best bound so far, from one search to the next."""
 
     def __init__(
-        self, instance: Instance, choice: Open, seed: int, workers: int
+        self,
+        instance: Instance,
+        choice: Open,
+        seed: int,
+        workers: int,
+        halt: Halt,
     ) -> None:
+        self.halt = halt
         self.instance = instance
         self.choice = choice
         self.seed = seed
@@ -88,7 +96,8 @@ class _Solve:
         if hint is not None and _is_allowed(self.instance, self.choice, hint):
             self._take(hint)
         is_walked = self._walk(work)
-        if self._is_proven() or size_of(self.instance, self.choice) > LARGEST_MODEL:
+        is_over = self._is_proven() or self.halt.is_due()
+        if is_over or size_of(self.instance, self.choice) > LARGEST_MODEL:
             return self._answer()
         joint = JointModel(self.instance, self.choice)
         start = self.placement or hint
@@ -101,6 +110,8 @@ class _Solve:
             return Answer("none", None, None, None)
         if self.placement is None:
             return Answer("out-of-work", None, None, self.bound)
+        if self.halt.is_due():
+            return self._answer()
         if not is_walked and not self._is_proven():
             self._walk(work)
         if not self._is_proven() and work > WORTH_A_SECOND_RUN:
@@ -117,7 +128,12 @@ class _Solve:
             # In a window most wires are fixed: the solver is faster than the arrays.
             return False
         found = prove(
-            self.instance, self.choice, beat=self.cost, work=work, seed=self.seed
+            self.instance,
+            self.choice,
+            beat=self.cost,
+            work=work,
+            seed=self.seed,
+            halt=self.halt,
         )
         if found.placement is not None:
             self._take(found.placement)
@@ -126,7 +142,13 @@ class _Solve:
 
     def _search(self, joint: JointModel, work: float, *, by_bound: bool) -> bool:
         """Let the solver search the whole model; return whether it may have a plan."""
-        run = Run(joint.model, joint.constant, seed=self.seed, workers=self.workers)
+        run = Run(
+            joint.model,
+            joint.constant,
+            seed=self.seed,
+            workers=self.workers,
+            halt=self.halt,
+        )
         status = run.solve(work, by_bound=by_bound)
         if status == cp_model.INFEASIBLE:
             if self.placement is not None:

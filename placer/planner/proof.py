@@ -16,6 +16,7 @@ from ortools.sat.python import cp_model
 
 from placer.planner.branches import branches_of
 from placer.planner.cpsat import Run
+from placer.planner.halt import NEVER, Halt
 from placer.planner.leaves import Lens
 from placer.planner.model import JointModel, everything
 from placer.planner.placement import evaluate
@@ -40,6 +41,8 @@ LEAF_WORK = 0.02
 MOST_LEAVES = 30_000
 MOST_WIRES = 24
 MOST_STEPS = 64
+PAUSE_WORK = 0.2
+"""Work of a walk after which it asks whether it must halt."""
 WALK_SHARE = 0.25
 """Share of the work that one walk may take."""
 LIMITS = (100, 97, 93, 87, 80, 70, 55)
@@ -66,7 +69,13 @@ def can_prove(instance: Instance) -> bool:
 
 
 def prove(
-    instance: Instance, choice: Open, *, beat: int, work: float, seed: int
+    instance: Instance,
+    choice: Open,
+    *,
+    beat: int,
+    work: float,
+    seed: int,
+    halt: Halt = NEVER,
 ) -> Proof:
     """Return the least placement cost below `beat`, or a bound of it."""
     is_full = choice == everything(instance)
@@ -82,15 +91,19 @@ def prove(
             limit,
             most_leaves=MOST_LEAVES,
             most_nodes=int(WALK_SHARE * work * speed),
+            pause=max(1, int(PAUSE_WORK * speed)),
+            halt=halt,
         )
         spent += nodes / speed
+        if halt.is_due():
+            break
         if not is_done:
             continue
         queue = [
             (int(bound), False, tuple(int(p) for p in place))
             for bound, place in zip(bounds, places, strict=True)
         ]
-        search = _Search(instance, choice, branches, turns, beat, seed)
+        search = _Search(instance, choice, branches, turns, beat, seed, halt)
         bound = min(search.settle(queue, work - spent), kept)
         return Proof(search.placement, search.best, bound, spent + search.spent)
     return Proof(None, beat, 0, spent)
@@ -111,7 +124,9 @@ class _Search:
         turns: Sequence[tuple[int, ...]],
         beat: int,
         seed: int,
+        halt: Halt,
     ) -> None:
+        self.halt = halt
         self.instance = instance
         self.branches = branches
         self.lens = Lens(instance, choice, branches)
@@ -127,6 +142,8 @@ class _Search:
         heapq.heapify(queue)
         unsettled = SETTLED
         while queue and queue[0][0] < self.best and self.spent < work:
+            if self.halt.is_due():
+                break
             bound, is_sharp, place = heapq.heappop(queue)
             if is_sharp:
                 unsettled = min(unsettled, self._solve(place, bound))
@@ -157,7 +174,9 @@ class _Search:
             return SETTLED
         joint = JointModel(self.instance, leaf.choice)
         joint.beat(self.best)
-        run = Run(joint.model, joint.constant, seed=self.seed, workers=1)
+        run = Run(
+            joint.model, joint.constant, seed=self.seed, workers=1, halt=self.halt
+        )
         status = run.solve(1.0, by_bound=False)
         self.spent += run.spent() + LEAF_WORK
         if status == cp_model.INFEASIBLE:

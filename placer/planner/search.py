@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 
 from placer.planner.anneal import anneal, flow_of, move, neighbours_of
 from placer.planner.decode import Taste, decode
+from placer.planner.halt import NEVER, Halt
 from placer.planner.placement import Misfit, evaluate
 
 if TYPE_CHECKING:
@@ -46,10 +47,12 @@ def search(
     seed: int,
     starts: Sequence[Placement] = (),
     lent_only: frozenset[int] = frozenset(),
+    halt: Halt = NEVER,
 ) -> list[Candidate]:
     """Return placements found from scratch and from given ones, best first.
 
-    Steps in `lent_only` take no workspace but what a wire lends.
+    Steps in `lent_only` take no workspace but what a wire lends.  When the halt is
+    due, what was found so far is returned.
     """
     found: dict[tuple[object, ...], Candidate] = {}
     links = neighbours_of(instance)
@@ -61,8 +64,10 @@ def search(
             earlier = starts[number % len(starts)]
             sites = list(earlier.sites)
         for round_number in range(amount.rounds):
+            if found and halt.is_due():
+                break
             try:
-                placement = decode(instance, sites, taste, earlier)
+                placement = decode(instance, sites, taste, earlier, halt=halt)
             except Misfit:
                 break
             _keep(instance, placement, found)

@@ -13,6 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from placer.compiled import compiled, inner
+from placer.planner.halt import NEVER as NEVER_HALT
+from placer.planner.halt import Halt
 from placer.planner.stepdirect import Parts, bound_recipe
 from placer.planner.steptables import ENDLESS, NEVER
 
@@ -61,49 +63,85 @@ class Walk:
     parts: Parts
 
 
+SIZE, NODES, DEPTH, LIMIT = range(4)
+"""What the tally of a walk holds: leaves kept, nodes seen, wires placed, the limit."""
+
+
 def walk(
-    given: Walk, limit: int, *, most_leaves: int, most_nodes: int
+    given: Walk,
+    limit: int,
+    *,
+    most_leaves: int,
+    most_nodes: int,
+    pause: int = 1_000_000,
+    halt: Halt = NEVER_HALT,
 ) -> tuple[Ints, Ints, int, int, bool]:
     """Return bounds and sites of what is below a limit, the limit kept, nodes, done.
 
-    Everything not returned has at least the limit kept, if the walk was done.
+    Everything not returned has at least the limit kept, if the walk was done.  After
+    every `pause` nodes the halt is asked.
     """
-    bounds, sites, kept, nodes, done = _walk(
-        given.domain,
-        given.apart,
-        given.alone,
-        given.rate,
-        given.state,
-        given.known,
-        given.who,
-        given.stride,
-        given.at,
-        given.cost,
-        given.length,
-        given.choices,
-        given.chain,
-        given.pays,
-        given.before,
-        given.first,
-        given.last,
-        given.others,
-        given.direct,
-        given.wires,
-        given.parts.pairs,
-        given.parts.ends,
-        given.parts.price,
-        given.parts.moves,
-        given.parts.floor,
-        given.parts.width,
-        given.parts.alone,
-        given.parts.base,
-        NEVER,
-        ENDLESS,
-        limit,
-        most_leaves,
-        most_nodes,
-    )
-    return bounds, sites, int(kept), int(nodes), bool(done)
+    wires, steps = given.domain.shape[0], len(given.choices)
+    shape = (wires + 1, steps, given.at.shape[1])
+    tally = np.array([0, 0, -1, limit], dtype=np.int64)
+    costs, lengths = np.zeros(shape, dtype=np.int64), np.zeros(shape, dtype=np.int64)
+    paid = np.zeros((wires + 1, *given.pays.shape), dtype=np.int64)
+    rates = np.full(wires + 1, given.rate.min(), dtype=np.int64)
+    fixed = np.zeros(wires + 1, dtype=np.int64)
+    least = np.zeros(wires, dtype=np.int64)
+    place = np.full(wires, -1, dtype=np.int64)
+    bounds = np.zeros(most_leaves, dtype=np.int64)
+    found = np.zeros((most_leaves, wires), dtype=np.int64)
+    is_done = False
+    while not is_done and tally[NODES] <= most_nodes and not halt.is_due():
+        is_done = bool(
+            _walk(
+                given.domain,
+                given.apart,
+                given.alone,
+                given.rate,
+                given.state,
+                given.known,
+                given.who,
+                given.stride,
+                given.at,
+                given.cost,
+                given.length,
+                given.choices,
+                given.chain,
+                given.pays,
+                given.before,
+                given.first,
+                given.last,
+                given.others,
+                given.direct,
+                given.wires,
+                given.parts.pairs,
+                given.parts.ends,
+                given.parts.price,
+                given.parts.moves,
+                given.parts.floor,
+                given.parts.width,
+                given.parts.alone,
+                given.parts.base,
+                NEVER,
+                ENDLESS,
+                tally,
+                costs,
+                lengths,
+                paid,
+                rates,
+                fixed,
+                least,
+                place,
+                bounds,
+                found,
+                min(tally[NODES] + pause, most_nodes + 1),
+            )
+        )
+    is_done = is_done and bool(tally[NODES] <= most_nodes)
+    size = int(tally[SIZE])
+    return bounds[:size], found[:size], int(tally[LIMIT]), int(tally[NODES]), is_done
 
 
 @inner
@@ -166,6 +204,45 @@ def _span(first, last, short, before):  # type: ignore[no-untyped-def]
     return most if last < 0 else max(far[last], 0)
 
 
+@inner
+def _begin(  # type: ignore[no-untyped-def]
+    domain, alone, at, state, cost, length, choices, pays, others, direct,
+    pairs, ends, price, moves, floor, width, single, base, never, endless,
+    costs, lengths, paid, rates, fixed, least, where,
+):  # fmt: skip
+    """Fill the arrays of a walk that has placed no wire yet."""
+    wires, sites = domain.shape
+    rates[wires] = others
+    for b in range(wires):
+        least[b] = alone[b].max()
+        for p in range(sites):
+            if domain[b, p]:
+                least[b] = min(least[b], alone[b, p])
+        fixed[0] += least[b]
+    paid[0] = pays
+    for i in range(len(choices)):
+        for c in range(choices[i]):
+            row = at[state[0, i], c]
+            if direct[i]:
+                costs[0, i, c], lengths[0, i, c] = bound_recipe(
+                    row,
+                    where,
+                    pairs,
+                    ends,
+                    price,
+                    moves,
+                    floor,
+                    width,
+                    single,
+                    base,
+                    never,
+                    endless,
+                )
+            else:
+                costs[0, i, c] = cost[row]
+                lengths[0, i, c] = length[row]
+
+
 @compiled
 def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
     domain,
@@ -198,59 +275,62 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
     base,
     never,
     endless,
-    limit,
-    most_leaves,
-    most_nodes,
+    tally,
+    costs,
+    lengths,
+    paid,
+    rates,
+    fixed,
+    least,
+    place,
+    bounds,
+    found,
+    until,
 ):
+    """Go on where the tally stands, up to a number of nodes; return whether done."""
     wires, sites = domain.shape
     steps, sets = len(choices), len(pays)
-    widest = at.shape[1]
+    most_leaves = len(bounds)
     low = rate.min()
-    costs = np.zeros((wires + 1, steps, widest), dtype=np.int64)
-    lengths = np.zeros((wires + 1, steps, widest), dtype=np.int64)
-    paid = np.zeros((wires + 1, sets, steps), dtype=np.int64)
-    rates = np.full(wires + 1, low, dtype=np.int64)
-    rates[wires] = others
-    fixed = np.zeros(wires + 1, dtype=np.int64)
-    least = np.zeros(wires, dtype=np.int64)
-    for b in range(wires):
-        least[b] = alone[b].max()
-        for p in range(sites):
-            if domain[b, p]:
-                least[b] = min(least[b], alone[b, p])
-        fixed[0] += least[b]
-    paid[0] = pays
     where = np.full(single.shape[1], -1, dtype=np.int64)
-    for i in range(steps):
-        for c in range(choices[i]):
-            row = at[state[0, i], c]
-            if direct[i]:
-                costs[0, i, c], lengths[0, i, c] = bound_recipe(
-                    row,
-                    where,
-                    pairs,
-                    ends,
-                    price,
-                    moves,
-                    floor,
-                    width,
-                    single,
-                    base,
-                    never,
-                    endless,
-                )
-            else:
-                costs[0, i, c] = cost[row]
-                lengths[0, i, c] = length[row]
+    if tally[2] < 0:
+        _begin(
+            domain,
+            alone,
+            at,
+            state,
+            cost,
+            length,
+            choices,
+            pays,
+            others,
+            direct,
+            pairs,
+            ends,
+            price,
+            moves,
+            floor,
+            width,
+            single,
+            base,
+            never,
+            endless,
+            costs,
+            lengths,
+            paid,
+            rates,
+            fixed,
+            least,
+            where,
+        )
+        tally[2] = 0
     short = np.zeros(steps, dtype=np.int64)
     ready = np.zeros(steps, dtype=np.int64)
-    place = np.full(wires, -1, dtype=np.int64)
-    bounds = np.zeros(most_leaves, dtype=np.int64)
-    found = np.zeros((most_leaves, wires), dtype=np.int64)
-    size = 0
-    nodes = 0
-    depth = 0
+    size, nodes, depth, limit = tally
     while depth >= 0:
+        if nodes >= until:
+            tally[0], tally[1], tally[2], tally[3] = size, nodes, depth, limit
+            return False
         place[depth] += 1
         p = place[depth]
         rates[depth] = low
@@ -267,8 +347,6 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
         if is_taken:
             continue
         nodes += 1
-        if nodes > most_nodes:
-            return bounds[:size], found[:size], limit, nodes, False
         rates[depth] = rate[p]
         fixed[depth + 1] = fixed[depth] + alone[depth, p] - least[depth]
         for i in range(steps):
@@ -343,4 +421,5 @@ def _walk(  # type: ignore[no-untyped-def]  # noqa: C901, PLR0912, PLR0915
         bounds[size] = value
         found[size] = place
         size += 1
-    return bounds[:size], found[:size], limit, nodes, True
+    tally[0], tally[1], tally[2], tally[3] = size, nodes, depth, limit
+    return True

@@ -14,6 +14,7 @@ from typing import TYPE_CHECKING, Any, cast
 import numpy as np
 
 from placer.device.model import Budget
+from placer.planner.halt import NEVER, Halt
 from placer.planner.joint import Open, solve
 from placer.planner.placement import (
     Instance,
@@ -52,6 +53,7 @@ def improve(
     windows: int,
     seed: int,
     size: Size | None = None,
+    halt: Halt = NEVER,
 ) -> Placement:
     """Return a placement that costs no more, after up to `windows` windows.
 
@@ -63,6 +65,8 @@ def improve(
     best_cost = evaluate(instance, best).cost
     position = 0
     for number in range(windows):
+        if halt.is_due():
+            break
         order = _order(best)
         calls = [i for i in order if len(instance.profiles[i]) > 1]
         if not calls:
@@ -76,7 +80,7 @@ def improve(
         if len(steps) > 4 * size.calls:
             continue
         changed = _solve_window(
-            instance, best, recipes, steps, size, seed + number, coarse
+            instance, best, recipes, steps, size, seed + number, coarse, halt
         )
         if changed is None:
             continue
@@ -101,6 +105,7 @@ def _solve_window(
     size: Size,
     seed: int,
     coarse: _Coarse,
+    halt: Halt,
 ) -> Placement | None:
     steps = sorted(steps)
     offers = {i: _offers(instance, placement, i, recipes[i], size) for i in steps}
@@ -116,7 +121,7 @@ def _solve_window(
         tuple(offers[i] for i in steps),
         tuple(near[i] for i in steps),
     )
-    answer = solve(small, choice, work=size.work, seed=seed, hint=hint)
+    answer = solve(small, choice, work=size.work, seed=seed, hint=hint, halt=halt)
     if answer.placement is None:
         return None
     return _splice(instance, placement, steps, answer.placement)
