@@ -182,7 +182,7 @@ def orders_of(
     touched = _touched(program, graph)
     seen = {_normal(written, touched)}
     named = [(AT_ONCE, at_once(game)), (AT_END, at_end(game))]
-    named += [(f"within {a.peak} wires", a) for a in answers]
+    named += [(f"within {_wires(a.peak)}", a) for a in answers]
     for name, answer in named:
         if answer.moves is None:
             continue
@@ -197,6 +197,10 @@ def orders_of(
         own = tuple(Move(m.action, m.number) for m in answer.moves)
         orders.append(Order(name, own, *_size(game, moves)))
     return orders, answers
+
+
+def _wires(number: int) -> str:
+    return f"{number} wire" + ("" if number == 1 else "s")
 
 
 Touched = dict[tuple[bool, int], frozenset[object]]

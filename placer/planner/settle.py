@@ -226,7 +226,8 @@ def _why(computed: int, dropped: int, uses: int, other: Tried | None, own: int) 
     """Say what happens to a value, and what the best other way would cost."""
     readers = f"{uses} reader" + ("" if uses == 1 else "s")
     if dropped:
-        what = f"computed {computed} times, measured away {dropped} times"
+        times = "once" if dropped == 1 else f"{dropped} times"
+        what = f"computed {computed} times, measured away {times}"
     elif computed > 1:
         what = f"returned and computed {computed} times for {readers}"
     else:

@@ -147,7 +147,7 @@ class Replay:
         if name in BRANCHING:
             self._branch(name, operation)
         elif name == "reset":
-            bits[wires[0]] = np.zeros(_WORDS, dtype=np.uint64)
+            self._reset(operation)
         elif name == "swap":
             first, second = wires
             bits[first], bits[second] = bits[second], bits[first]
@@ -158,6 +158,32 @@ class Replay:
         else:
             target = wires[-1]
             bits[target] = bits[target] ^ self._all_ones(wires[:-1])
+
+    def _reset(self, operation: Operation) -> None:
+        """Take a wire to 0; workspace must be there already, else it is measured."""
+        wire = operation.wires[0]
+        held = self.bits[wire]
+        is_new = wire not in self.refused and len(self.faults) < MOST_FAULTS
+        if wire in self.claimed and is_new and held.any():
+            self.refused.add(wire)
+            name = self.program.wire_names[wire]
+            writer = self._writer(operation.index, wire)
+            self.faults.append(
+                Fault(
+                    operation.place,
+                    "reset-entangled",
+                    f"the workspace wire {name} is reset while it may hold what line "
+                    f"{writer.place.line} has written{self._example(held)}: that "
+                    "measures it, and disturbs what it was computed from",
+                    "undo what the workspace holds before the reset, or drop the claim",
+                )
+            )
+        self.bits[wire] = np.zeros(_WORDS, dtype=np.uint64)
+
+    def _writer(self, index: int, wire: int) -> Operation:
+        """Return the last operation before another that acts on a wire."""
+        earlier = self.program.operations[:index]
+        return next(op for op in reversed(earlier) if wire in op.wires)
 
     def _all_ones(self, wires: Sequence[int]) -> Words:
         """Return where all wires are 1."""

@@ -20,13 +20,15 @@ if TYPE_CHECKING:
 class Making:
     """The making of one value.
 
-    `scope` is the outermost scope whose compute part makes it, `steps` its operations,
-    `wires` the workspace wires it writes, in the order in which they are first touched,
+    `scope` is the outermost scope whose compute part makes it, `home` the innermost,
+    whose cleanup takes it back first.  `steps` are its operations, `wires` the
+    workspace wires it writes, in the order in which they are first touched,
     `inputs` other makings it reads, `outside` the other wires it reads.  `first` counts
     the kept operations before it.
     """
 
     scope: int
+    home: int
     first: int
     steps: list[int] = field(default_factory=list)
     wires: list[int] = field(default_factory=list)
@@ -116,7 +118,7 @@ class _Search:
         over = self.ends.get(index)
         if over is not None:
             for wire, number in list(self.owner.items()):
-                if self.found[number].scope in over:
+                if self.found[self._root(number)].home in over:
                     del self.owner[wire]
 
     def _make(self, operation: Operation, part: Part) -> None:
@@ -131,9 +133,9 @@ class _Search:
                 raise _Fixed(part.scope)
             self.turned ^= {wire}
         if not self.turned:
-            self._close(part.scope)
+            self._close(part.scope, part.home)
 
-    def _close(self, scope: int) -> None:
+    def _close(self, scope: int, home: int) -> None:
         """Give the finished block to the making whose wires it writes."""
         own = self._own()
         if not own:
@@ -144,7 +146,7 @@ class _Search:
         number = min(touched, default=-1)
         if number < 0:
             number = len(self.found)
-            self.found.append(Making(scope, len(self.kept)))
+            self.found.append(Making(scope, home, len(self.kept)))
             self.merged.append(number)
             self.readers.append(set())
         for other in sorted(touched - {number}):
@@ -194,6 +196,8 @@ class _Search:
             return
         self.merged[two] = one
         into, other = self.found[one], self.found[two]
+        if into.home != other.home:
+            into.home = into.scope
         into.steps = sorted({*into.steps, *other.steps})
         into.wires += [w for w in other.wires if w not in into.wires]
         into.inputs |= other.inputs

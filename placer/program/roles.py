@@ -23,10 +23,15 @@ _FIXED = frozenset(["measure", "reset", "barrier"])
 
 @dataclass(frozen=True, slots=True)
 class Part:
-    """The role of an operation, and the outermost scope that it makes something for."""
+    """The role of an operation, and the scopes that it makes something for.
+
+    `scope` is the outermost one, `home` the innermost, whose cleanup takes it back
+    first; -1 where it makes nothing.
+    """
 
     role: Role
-    scope: int
+    scope: int = -1
+    home: int = -1
 
 
 def part_of(program: Program, operation: Operation, fixed: frozenset[int]) -> Part:
@@ -39,11 +44,11 @@ def part_of(program: Program, operation: Operation, fixed: frozenset[int]) -> Pa
             chain.append((number, part))
         number, part = scope.parent, scope.part
     if any(part == "cleanup" for _, part in chain):
-        return Part("clean", -1)
-    for number, part in reversed(chain):
-        if part == "compute":
-            return Part("make", number)
-    return Part("use", -1)
+        return Part("clean")
+    making = [number for number, part in chain if part == "compute"]
+    if making:
+        return Part("make", making[-1], making[0])
+    return Part("use")
 
 
 def name_of(operation: Operation) -> str:

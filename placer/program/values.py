@@ -131,7 +131,7 @@ def _written(
     first_of = {use.steps[0]: k for k, use in enumerate(uses)}
     cleaned: dict[int, list[int]] = {}
     for n, making in enumerate(found.makings):
-        begin = program.scopes[making.scope].cleanup[0]
+        begin = program.scopes[making.home].cleanup[0]
         cleaned.setdefault(begin, []).append(value_of[n])
 
     def compute(value: int) -> None:
@@ -274,5 +274,7 @@ def _spare(program: Program, rows: Sequence[Making]) -> list[frozenset[int]]:
         if operation.index in last:
             k = last[operation.index]
             bits = [replay.bits[wire] for wire in rows[k].wires]
-            result[k] = frozenset(p for p, b in enumerate(bits) if not b.any())
+            back = frozenset(p for p, b in enumerate(bits) if not b.any())
+            # A value that is never anything but 0 here still has wires.
+            result[k] = back if len(back) < len(bits) else frozenset()
     return result

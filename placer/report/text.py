@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from placer.report.cleanup import add_cleanup
 from placer.report.words import (
     WIDTH,
     Page,
@@ -56,6 +57,8 @@ def plan_text(
     page = Page(width, colour=colour)
     _verdict(page, plan)
     _policies(page, plan)
+    if plan.cleanup is not None:
+        add_cleanup(page, plan.cleanup)
     _calls(page, plan)
     _error(page, plan)
     _sure(page, plan, checked)

@@ -43,7 +43,6 @@ def refusal(body):
         # The swap carries the value back.
         "cx a[0], w[0]; swap w[0], w[1]; cx a[0], w[1];",
         # A reset discards whatever was there.
-        "cx a[0], w[0]; h t; reset w[0];",
         # Two exact half turns.
         "rx(pi) w[0]; ry(-pi) w[0]; cy a[0], w[0]; cx a[0], w[0]; x w[1]; x w[1];",
         "crx(pi) a[0], w[0]; cx a[0], w[0]; U(0, 1, 2) w[0]; rx(2 * pi) w[0];",
