@@ -1,6 +1,7 @@
 """OpenQASM text to a program: which version, then parse, work out, assemble.
 
-Syntax is in `parse_openqasm2` and `parse_openqasm3`, meaning in `elaborate`, start
+Flat files take a fast way, `flat`.  Of all others the syntax is in `parse_openqasm2`
+and `parse_openqasm3`, the meaning in `elaborate`.  Start
 states in `assemble`, the check of claims in `claims`.
 """
 
@@ -9,9 +10,10 @@ from __future__ import annotations
 import re
 
 from placer.errors import InputError, InternalError
-from placer.program.assemble import assemble
+from placer.program.assemble import Syntax, assemble
 from placer.program.claims import check_claims
 from placer.program.elaborate import Parser, elaborate
+from placer.program.flat import read_flat
 from placer.program.model import Program, Start
 from placer.program.parse_openqasm2 import parse_openqasm2
 from placer.program.parse_openqasm3 import parse_openqasm3
@@ -33,9 +35,22 @@ def read_qasm(text: str, path: str, *, open_inputs: bool = False) -> Program:
         With every fault found in one pass.
     """
     version = _version(text, path)
+    start: Start = "zero" if version == "2" and not open_inputs else "unknown"
+    draft = read_flat(text, path, version, start=start)
+    if draft is not None:
+        dialect: Syntax = "openqasm2" if version == "2" else "openqasm3"
+        program = assemble(draft, dialect, text, path, open_inputs=open_inputs)
+        check_claims(program)
+        return program
+    return read_fully(text, path, version, start, open_inputs=open_inputs)
+
+
+def read_fully(
+    text: str, path: str, version: str, start: Start, *, open_inputs: bool
+) -> Program:
+    """Return the program of a text by the full reader of its version ('2' or '3')."""
     parse = _PARSERS[version]
     parsed = parse(text, path)
-    start: Start = "zero" if version == "2" and not open_inputs else "unknown"
     work = elaborate(parsed, parse, path, start=start)
     if work.faults:
         raise InputError(work.faults)
