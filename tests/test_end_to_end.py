@@ -77,13 +77,22 @@ def test_three_demos_have_three_different_best_answers(
 
 
 def test_the_fourth_demo_does_not_fit_and_says_what_would() -> None:
-    plan = placer.plan("night-watch", "shale-12")
+    plan = placer.plan("night-watch", "shale-12", cleanup="as-written")
     assert not plan.verdict.fits
     assert "ready" in plan.verdict.sentence
     assert "--budget" in plan.verdict.nearest
     share = float(plan.verdict.nearest.split("--budget ")[1].split(")")[0])
-    again = placer.plan("night-watch", "shale-12", budget=share)
+    again = placer.plan("night-watch", "shale-12", budget=share, cleanup="as-written")
     assert again.verdict.fits
+
+
+def test_the_fourth_demo_fits_when_its_value_is_returned() -> None:
+    plan = placer.plan("night-watch", "shale-12", effort="quick")
+    assert plan.verdict.fits
+    assert plan.cleanup is not None
+    assert plan.cleanup.chosen == "at once"
+    (value,) = plan.cleanup.values
+    assert (value.treatment, value.computed) == ("again", 12)
 
 
 @pytest.mark.parametrize(
