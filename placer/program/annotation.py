@@ -11,7 +11,8 @@ from dataclasses import dataclass
 from placer.errors import Fault, InputError, did_you_mean
 from placer.program.syntax import Annotation
 
-_KNOWN = ("workspace", "lendable", "keep")
+PAIRED = ("compute", "uncompute")
+_KNOWN = ("workspace", "lendable", "keep", *PAIRED)
 _WORKSPACE = {"init": "zero", "ends": "zero"}
 
 
@@ -40,12 +41,13 @@ def refuse_own(notes: Iterable[Annotation]) -> None:
     faults = []
     for note in notes:
         if is_own(note):
-            _word(note)
+            is_pair = word_of(note) in PAIRED
+            where = "a gate call or a loop" if is_pair else "a declaration of qubits"
             faults.append(
                 Fault(
                     note.place,
                     "annotation-place",
-                    f"'@{note.name}' belongs on a declaration of qubits",
+                    f"'@{note.name}' belongs on {where}",
                 )
             )
     if faults:
@@ -58,7 +60,9 @@ def wire_notes(notes: Iterable[Annotation]) -> WireNotes:
     for note in notes:
         if not is_own(note):
             continue
-        word = _word(note)
+        word = word_of(note)
+        if word in PAIRED:
+            refuse_own([note])
         if word in words:
             raise InputError.at(
                 note.place, "annotation-twice", f"'@placer.{word}' stands twice"
@@ -75,7 +79,7 @@ def wire_notes(notes: Iterable[Annotation]) -> WireNotes:
     return WireNotes("workspace" in words, "keep" not in words)
 
 
-def _word(note: Annotation) -> str:
+def word_of(note: Annotation) -> str:
     """Return the word after the namespace, which must be known."""
     word = note.name.removeprefix("placer").removeprefix(".")
     if word not in _KNOWN:
@@ -111,3 +115,34 @@ def _check_arguments(word: str, note: Annotation) -> None:
             f"'@placer.{word}' lacks {' and '.join(missing)}",
             help,
         )
+
+
+def arguments_of(
+    note: Annotation, *, required: tuple[str, ...], optional: tuple[str, ...]
+) -> dict[str, str]:
+    """Return the `key=value` arguments of an annotation of ours.
+
+    Raises
+    ------
+    InputError
+        If one is missing, unknown, empty or there twice.
+    """
+    found: dict[str, str] = {}
+    for part in note.rest.split():
+        key, _, value = part.partition("=")
+        if key not in (*required, *optional) or key in found or not value:
+            raise InputError.at(
+                note.place,
+                "annotation-argument",
+                f"'@{note.name}' does not take {part!r}",
+                "it takes " + ", ".join(f"{k}=..." for k in (*required, *optional)),
+            )
+        found[key] = value
+    missing = [key for key in required if key not in found]
+    if missing:
+        raise InputError.at(
+            note.place,
+            "annotation-argument",
+            f"'@{note.name}' lacks {' and '.join(f'{key}=...' for key in missing)}",
+        )
+    return found

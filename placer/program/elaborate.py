@@ -10,14 +10,22 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 
-from placer.errors import Fault, InputError
-from placer.program.annotation import foreign, is_own, refuse_own, wire_notes
+from placer.errors import Fault, InputError, Place
+from placer.program.annotation import (
+    PAIRED,
+    foreign,
+    is_own,
+    refuse_own,
+    wire_notes,
+    word_of,
+)
 from placer.program.draft import Draft, Step
 from placer.program.gates import Gates
 from placer.program.gatetable import INCLUDE_FILES
 from placer.program.loops import MOST_OPERATIONS, loop_values
 from placer.program.model import OperationKind, Start
 from placer.program.names import Bits, Broken, Constant, Names, Wires
+from placer.program.pairs import Pairs
 from placer.program.syntax import (
     AliasDeclaration,
     Barrier,
@@ -62,11 +70,31 @@ class Elaboration:
     faults: list[Fault] = field(default_factory=list)
     files: list[Path] = field(default_factory=list)
     skipped: int = 0
+    pairs: Pairs = field(init=False)
+
+    def __post_init__(self) -> None:
+        """Let the pairs see the draft."""
+        self.pairs = Pairs(self.draft, self._scratch)
+
+    def _scratch(self, name: str, place: Place) -> Sequence[int]:
+        wires = self.names.wires(Operand(name, (), place)).wires
+        for register in self.draft.registers:
+            inside = register.first <= wires[0] < register.first + register.width
+            if inside and not register.is_workspace:
+                raise InputError.at(
+                    place,
+                    "not-scratch",
+                    f"'{name}' is no workspace",
+                    "write '@placer.workspace init=zero ends=zero' before its "
+                    "declaration",
+                )
+        return wires
 
     def run(self, statements: Sequence[Statement]) -> None:
         """Work out statements at the outermost level."""
         try:
             self._statements(statements)
+            self.faults.extend(self.pairs.left())
         except _TooMany:
             return
         finally:
@@ -75,7 +103,12 @@ class Elaboration:
     def _statements(self, statements: Sequence[Statement]) -> None:
         for statement in statements:
             try:
+                first = len(self.draft.steps)
+                pair = None
+                if isinstance(statement, _PAIRABLE):
+                    pair = self.pairs.begin(statement.annotations)
                 _WORKERS[type(statement)](self, statement)
+                self.faults.extend(self.pairs.end(pair, first))
                 self._check_notes(statement)
             except InputError as error:
                 self.faults.extend(error.faults)
@@ -99,7 +132,13 @@ class Elaboration:
         if not statement.annotations:
             return
         if not isinstance(statement, QubitDeclaration):
-            refuse_own(statement.annotations)
+            refuse_own(
+                note
+                for note in statement.annotations
+                if not isinstance(statement, _PAIRABLE)
+                or not is_own(note)
+                or word_of(note) not in PAIRED
+            )
         if isinstance(statement, _WITHOUT_STEPS):
             self.draft.notes.extend(
                 f"the annotation '@{note.name}' in line {note.place.line} is not "
@@ -390,6 +429,7 @@ _DECLARATIONS = (
     ConstantDeclaration,
     AliasDeclaration,
 )
+_PAIRABLE = (GateCall, Loop)
 _WITHOUT_STEPS = (*_DECLARATIONS, GateDefinition, Include, Loop)
 _WORKERS: dict[type[Statement], Callable[..., None]] = {
     Include: Elaboration.include,

@@ -87,6 +87,8 @@ class _Search:
         self.block: list[Operation] = []
         self.turned: set[int] = set()
         self.scope = -1
+        # Workspace that something else may have left in another state than |0>.
+        self.dirty: set[int] = set()
         self.ends: dict[int, list[int]] = {}
         for scope in program.scopes:
             end = max(scope.cleanup[1], scope.body[1])
@@ -138,7 +140,7 @@ class _Search:
     def _close(self, scope: int, home: int) -> None:
         """Give the finished block to the making whose wires it writes."""
         own = self._own()
-        if not own:
+        if not own or not self.dirty.isdisjoint(own):
             raise _Fixed(scope)
         touched = {self._root(self.owner[w]) for w in own if w in self.owner}
         if any(self.found[n].scope != scope for n in touched):
@@ -211,6 +213,11 @@ class _Search:
         spoiled = [held[w] for w in written(operation) if w in held]
         if spoiled:
             raise _Fixed(self.found[spoiled[0]].scope)
+        for wire in written(operation):
+            if operation.kind == "reset":
+                self.dirty.discard(wire)
+            elif self.scratch[wire]:
+                self.dirty.add(wire)
         self.owners[operation.index] = held
         self.kept.append(operation.index)
 
