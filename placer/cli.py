@@ -33,12 +33,15 @@ from placer.errors import (
     PlacerError,
     did_you_mean,
 )
+from placer.halt import Halt, Interrupted
+from placer.interrupts import stoppable
 from placer.plan import POLICIES, to_json
 from placer.program.planned import planned_program
 from placer.report.outputs import STDOUT, check_targets, write_all
 from placer.report.progress import Progress
 from placer.report.sorts import demo_programs, sort_of
 from placer.report.words import WIDTH
+from placer.units import ticks_down
 from placer.version import VERSION
 
 if TYPE_CHECKING:
@@ -61,12 +64,12 @@ class Commands(click.Group):
         """Run a command, and exit with the status that its error owns."""
         try:
             return super().invoke(ctx)
+        except (KeyboardInterrupt, Interrupted):
+            click.echo("\nplacer: interrupted; nothing was written", err=True)
+            ctx.exit(INTERRUPTED)
         except PlacerError as error:
             click.echo(_error_text(error), err=True)
             ctx.exit(error.exit_code)
-        except KeyboardInterrupt:
-            click.echo("\nplacer: interrupted; nothing was written", err=True)
-            ctx.exit(INTERRUPTED)
         except (click.ClickException, click.exceptions.Exit, click.Abort):
             raise
         except Exception as error:
@@ -123,6 +126,21 @@ def _finite(
     "--most-sites", type=click.IntRange(1), metavar="N", help="Most sites to touch."
 )
 @click.option(
+    "--longest",
+    "longest_us",
+    type=click.FloatRange(0, 1e9, min_open=True),
+    callback=_finite,
+    metavar="US",
+    help="Longest run time of the program in microseconds.",
+)
+@click.option(
+    "--goal",
+    type=click.Choice(["error", "time", "sites", "t-gates", "estimate"]),
+    default="error",
+    show_default=True,
+    help="What is made least; the expected error comes second.",
+)
+@click.option(
     "--effort",
     type=click.Choice(["quick", "normal", "deep"]),
     default="normal",
@@ -154,6 +172,19 @@ def _finite(
     is_flag=True,
     help="Take every wire that is not declared scratch as unknown at the start.",
 )
+@click.option(
+    "--from",
+    "from_file",
+    metavar="PLAN",
+    help="Start from an earlier plan; wires move only where that pays.",
+)
+@click.option(
+    "--wall-limit",
+    type=click.FloatRange(0, 1e7, min_open=True),
+    callback=_finite,
+    metavar="SECONDS",
+    help="End by then with the best plan so far; a plan says when it was hit.",
+)
 @click.option("--plan", "plan_file", metavar="FILE", help="Write the plan as JSON.")
 @click.option(
     "--qasm", "qasm_file", metavar="FILE", help="Write placed OpenQASM 3, unrouted."
@@ -180,6 +211,9 @@ def plan(
     share: float | None,
     least_success: float | None,
     most_sites: int | None,
+    longest_us: float | None,
+    from_file: str | None,
+    wall_limit: float | None,
     plan_file: str | None,
     qasm_file: str | None,
     routed_file: str | None,
@@ -193,17 +227,27 @@ def plan(
     PROGRAM is an OpenQASM 2 or 3 file, a program YAML file, or the name of a demo
     program.  A FILE of '-' is standard output.
     """
+    halt = Halt(wall_limit)
     files = (plan_file, qasm_file, routed_file)
     targets = [name for name in files if name is not None]
     _one_on_stdout(targets, as_json=as_json)
     check_targets(targets, (program, device))
     source, chosen = _read_both(program, device, open_inputs=options["open_inputs"])
-    budget = _budget(chosen, share, least_success, most_sites)
-    with Progress(sys.stderr, is_quiet=quiet) as progress:
+    budget = _budget(chosen, share, least_success, most_sites, longest_us)
+    earlier = None if from_file is None else _read_text(from_file)
+    with Progress(sys.stderr, is_quiet=quiet) as progress, stoppable(halt, progress):
         # Loaded late: importing the solver takes longer than most commands run.
         from placer.api import plan as find_plan
 
-        found = find_plan(source, chosen, budget=budget, progress=progress, **options)
+        found = find_plan(
+            source,
+            chosen,
+            budget=budget,
+            earlier=earlier,
+            halt=halt,
+            progress=progress,
+            **options,
+        )
     texts: dict[str, str] = {}
     if plan_file is not None:
         texts[plan_file] = to_json(found)
@@ -252,9 +296,15 @@ def _budget(
     share: float | None,
     least_success: float | None,
     most_sites: int | None,
+    longest_us: float | None,
 ) -> Budget:
     """Return the device's budget with what the command line says instead."""
-    given = {"share": share, "least_success": least_success, "most_sites": most_sites}
+    given = {
+        "share": share,
+        "least_success": least_success,
+        "most_sites": most_sites,
+        "longest_ns": None if longest_us is None else ticks_down(longest_us * 1e3),
+    }
     changes: dict[str, Any] = {k: v for k, v in given.items() if v is not None}
     return dataclasses.replace(device.budget, **changes)
 

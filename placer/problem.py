@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from placer.device.model import Budget, Device
     from placer.program.model import Operation, Program
 
-Goal = Literal["error", "estimate"]
+Goal = Literal["error", "time", "sites", "t-gates", "estimate"]
 AS_WRITTEN = "as-written"
 
 
@@ -29,8 +29,9 @@ AS_WRITTEN = "as-written"
 class Problem:
     """One question to the planner.
 
-    `goal` is what is least: `error` (the expected error of the included route) or
-    `estimate` (the placement cost, see DEVELOPERS.md).  `hash` identifies the content.
+    `goal` is what is least: `error` (the expected error of the included route), its
+    `time`, its `sites`, its `t-gates`, each with the error second, or `estimate` (the
+    placement cost, see DEVELOPERS.md).  `hash` identifies the content.
     """
 
     device: Device

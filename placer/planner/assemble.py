@@ -61,7 +61,7 @@ def plan_of(
         ),
         policies=tuple(_row(p, outcome) for p in outcome.policies),
         verdict=verdict_of(judged.figures, budget, nearest),
-        notes=(*_why(outcome), *notes),
+        notes=(*_why(outcome), *outcome.notes, *notes),
         cleanup=cleanup,
     )
 

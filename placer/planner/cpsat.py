@@ -8,7 +8,7 @@ from typing import Any
 from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
-from placer.planner.halt import NEVER, Halt, watched
+from placer.halt import NEVER, Halt, watched
 
 
 class Run:

@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from placer.planner.halt import NEVER, Halt
+from placer.halt import NEVER, Halt
 from placer.planner.placement import (
     Instance,
     Misfit,

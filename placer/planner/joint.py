@@ -13,8 +13,8 @@ from typing import Literal
 from ortools.sat.python import cp_model
 
 from placer.errors import InternalError
+from placer.halt import NEVER, Halt
 from placer.planner.cpsat import Run
-from placer.planner.halt import NEVER, Halt
 from placer.planner.model import JointModel, Open, everything, size_of
 from placer.planner.placement import (
     Instance,

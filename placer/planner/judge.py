@@ -9,12 +9,18 @@ from __future__ import annotations
 import dataclasses
 from typing import TYPE_CHECKING
 
+import numpy as np
+
+from placer.errors import InternalError
 from placer.placed import place
 from placer.planner.placement import evaluate
-from placer.trial.router import Setting, route
+from placer.trial.router import RouteResult, Setting, route
 from placer.trial.timeline import figures, timeline
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from placer.halt import Halt
     from placer.placed import PlacedCircuit
     from placer.plan import Figures, Route
     from placer.planner.placement import Instance, Placement
@@ -81,13 +87,43 @@ class Judge:
             self._judged[key] = self._follow(placement, setting, seed)
         return self._judged[key]
 
+    def follow(
+        self,
+        placement: Placement,
+        gaps: Sequence[int],
+        swaps: Sequence[tuple[int, int]],
+    ) -> Judged:
+        """Return the placement judged on a given route.
+
+        `gaps[g]` is the number of swaps before two-body gate g.
+
+        Raises
+        ------
+        InternalError
+            If the route breaks a rule of the device or of the circuit.
+        """
+        placed = self._place(placement)
+        if len(gaps) != len(placed.gates):
+            raise InternalError("the route does not name every two-body gate once")
+        pairs = np.array(swaps, dtype=np.int64).reshape(-1, 2)
+        given = RouteResult(
+            np.array(gaps, dtype=np.int64),
+            pairs[:, 0].copy(),
+            pairs[:, 1].copy(),
+            np.zeros(placed.steps, dtype=np.int64),
+        )
+        return self._judge(placement, placed, given)
+
     def _follow(
         self, placement: Placement, setting: Setting, seed: int
     ) -> Judged | None:
         placed = self._place(placement)
         found = route(placed, self.route_tables, setting=setting, seed=seed)
-        if found is None:
-            return None
+        return None if found is None else self._judge(placement, placed, found)
+
+    def _judge(
+        self, placement: Placement, placed: PlacedCircuit, found: RouteResult
+    ) -> Judged:
         line = timeline(placed, self.instance.tables, found)
         share = self.instance.problem.budget.share
         wires = placed.wires
@@ -143,11 +179,16 @@ class Judge:
             }
         return self._placed[placement]
 
-    def with_expected_swaps(self, judged: Judged) -> Judged:
-        """Add the mean number of swaps of routes that no choice ever looked at."""
+    def with_expected_swaps(self, judged: Judged, halt: Halt) -> Judged:
+        """Add the mean number of swaps of routes that no choice ever looked at.
+
+        Fewer routes are run when the work must end, none if it must end at once.
+        """
         placed = self._place(judged.placement)
         counts = []
         for setting, seed in HELD_OUT:
+            if halt.is_due():
+                break
             found = route(placed, self.route_tables, setting=setting, seed=seed)
             if found is not None:
                 counts.append(found.count)

@@ -8,7 +8,7 @@ as written, all at once, all at the end, and points of the curve.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, cast
 
 from placer.planner.cleanup import game as games
 from placer.planner.cleanup.curve import curve
@@ -16,7 +16,7 @@ from placer.planner.cleanup.greedy import at_end, at_once
 from placer.planner.profile import profile_of
 from placer.problem import choices_for
 from placer.program.inverse import undone
-from placer.program.rewrite import Move
+from placer.program.rewrite import Action, Move
 from placer.tables import device_tables
 
 if TYPE_CHECKING:
@@ -239,6 +239,12 @@ def _normal(
         layers[layer].append((action, number))
         layer_of.update(dict.fromkeys(things, layer + 1))
     return tuple(tuple(sorted(layer)) for layer in layers)
+
+
+def order_of(game: Game, name: str, moves: Sequence[tuple[str, int]]) -> Order:
+    """Return an order that is given by its moves."""
+    own = tuple(Move(cast("Action", action), number) for action, number in moves)
+    return Order(name, own, *_size(game, moves))
 
 
 def _size(game: Game, moves: Sequence[tuple[str, int]]) -> tuple[int, int]:

@@ -14,9 +14,9 @@ from typing import TYPE_CHECKING
 
 from ortools.sat.python import cp_model
 
+from placer.halt import NEVER, Halt
 from placer.planner.branches import branches_of
 from placer.planner.cpsat import Run
-from placer.planner.halt import NEVER, Halt
 from placer.planner.leaves import Lens
 from placer.planner.model import JointModel, everything
 from placer.planner.placement import evaluate

@@ -9,10 +9,11 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from placer.halt import NEVER, Halt
 from placer.planner.anneal import anneal, flow_of, move, neighbours_of
 from placer.planner.decode import Taste, decode
-from placer.planner.halt import NEVER, Halt
 from placer.planner.placement import Misfit, evaluate
+from placer.planner.zeroswap import zero_swap
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -32,11 +33,17 @@ class Candidate:
 
 @dataclass(frozen=True, slots=True)
 class Amount:
-    """How much work a search may do: rounds per start, annealing moves per round."""
+    """How much work a search may do: rounds per start, annealing moves per round.
+
+    `scales` weigh distance against all else, one start each; `delay` weighs time.
+    `embeds` are the nodes of one search for sites that need no swap at all.
+    """
 
     rounds: int
     moves: int
     scales: tuple[float, ...]
+    delay: float = 1.0
+    embeds: int = 0
 
 
 def search(
@@ -57,7 +64,12 @@ def search(
     found: dict[tuple[object, ...], Candidate] = {}
     links = neighbours_of(instance)
     for number, scale in enumerate(amount.scales):
-        taste = Taste(recipes, move_scale=scale, lent_only=lent_only)
+        taste = Taste(
+            recipes,
+            move_scale=scale,
+            delay_scale=amount.delay,
+            lent_only=lent_only,
+        )
         sites = _first_sites(instance, recipes)
         earlier: Placement | None = None
         if starts:
@@ -72,13 +84,18 @@ def search(
                 break
             _keep(instance, placement, found)
             is_fresh = not starts and round_number < (amount.rounds + 1) // 2
+            heat = 1.0 if is_fresh else 0.1
+            if is_fresh and amount.embeds and number == round_number == 0:
+                moved = _unswapped(instance, placement, amount.embeds, seed, found)
+                if moved is not None:
+                    placement, heat = moved, 0.0
             to = anneal(
                 flow_of(instance, placement, scale),
                 instance.usable,
                 links,
                 moves=amount.moves,
                 seed=seed * 1009 + number * 101 + round_number,
-                heat=1.0 if is_fresh else 0.1,
+                heat=heat,
             )
             try:
                 placement = move(instance, placement, [int(p) for p in to])
@@ -89,6 +106,25 @@ def search(
             sites = list(placement.sites)
     ranked = sorted(found.items(), key=lambda item: (item[1].estimate, item[0]))
     return [candidate for _, candidate in ranked]
+
+
+def _unswapped(
+    instance: Instance,
+    placement: Placement,
+    nodes: int,
+    seed: int,
+    found: dict[tuple[object, ...], Candidate],
+) -> Placement | None:
+    """Return the placement at sites that need no swap, if they are found."""
+    to = zero_swap(instance, placement, nodes=nodes, seed=seed)
+    if to is None:
+        return None
+    try:
+        moved = move(instance, placement, [int(p) for p in to])
+    except Misfit:
+        return None
+    _keep(instance, moved, found)
+    return moved
 
 
 def _keep(

@@ -13,7 +13,15 @@ from typing import TYPE_CHECKING, Literal
 from placer.errors import InputError, NoPlan, OutOfTime
 from placer.plan import Cleanup, CurvePoint, OrderRow, ValueRow
 from placer.planner.loop import run
-from placer.planner.orders import AS_WRITTEN, AT_END, AT_ONCE, game_of, orders_of
+from placer.planner.orders import (
+    AS_WRITTEN,
+    AT_END,
+    AT_ONCE,
+    game_of,
+    order_of,
+    orders_of,
+)
+from placer.planner.rank import aim
 from placer.planner.verdict import overrun
 from placer.problem import make_problem
 from placer.program.planned import planned_program
@@ -22,9 +30,11 @@ from placer.program.values import values_of
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
-    from placer.planner.cleanup.game import Answer
+    from placer.halt import Halt
+    from placer.planner.cleanup.game import Answer, Game
     from placer.planner.loop import Effort, Outcome
     from placer.planner.orders import Order
+    from placer.planner.warm import Earlier
     from placer.problem import Problem
     from placer.program.values import ValueGraph
 
@@ -51,6 +61,8 @@ def settle(
     effort: Effort,
     seed: int,
     progress: Callable[[str], None],
+    halt: Halt | None = None,
+    earlier: Earlier | None = None,
 ) -> tuple[Outcome, Cleanup | None]:
     """Return the outcome of the best order, and what is said about the others.
 
@@ -64,12 +76,22 @@ def settle(
     """
     graph = values_of(problem.program)
     if not graph.values:
-        return run(problem, effort=effort, seed=seed, progress=progress), None
+        found = run(
+            problem,
+            effort=effort,
+            seed=seed,
+            progress=progress,
+            halt=halt,
+            earlier=earlier,
+        )
+        return found, None
     progress("cleanup: least cost for each number of wires")
     game = game_of(problem.program, graph, problem.device, problem.only)
     orders, curve = orders_of(problem.program, game, graph, effort)
     wanted = _asked_for(orders, asked)
-    runner = _Runner(problem, seed, progress)
+    if earlier is not None and asked == "optimised":
+        wanted = _with_earlier(wanted, game, graph, earlier)
+    runner = _Runner(problem, seed, progress, halt, earlier)
     if len(wanted) == 1:
         tried = [runner.plan(wanted[0], effort)]
     else:
@@ -107,6 +129,9 @@ def _all_of(runner: _Runner, orders: Sequence[Order], effort: Effort) -> list[Tr
         return quick
     ranked = sorted(quick, key=_rank)
     chosen = {t.order.name for t in ranked[: AGAIN[effort]] if t.outcome is not None}
+    if runner.earlier is not None:
+        # What was planned before is the start; the others have had their chance.
+        chosen = {ranked[0].order.name}
     if effort == "deep":
         chosen.update(name for name in COMPARED if name in {o.name for o in orders})
     return [
@@ -114,19 +139,46 @@ def _all_of(runner: _Runner, orders: Sequence[Order], effort: Effort) -> list[Tr
     ]
 
 
+def _with_earlier(
+    orders: Sequence[Order], game: Game, graph: ValueGraph, earlier: Earlier
+) -> list[Order]:
+    """Return the orders with that of an earlier plan, if it has the same values."""
+    cleanup = earlier.data.get("cleanup")
+    if not cleanup or not cleanup["moves"]:
+        return list(orders)
+    if [row["name"] for row in cleanup["values"]] != [v.name for v in graph.values]:
+        return list(orders)
+    moves = tuple((str(action), int(number)) for action, number in cleanup["moves"])
+    if any(tuple((str(a), n) for a, n in o.moves) == moves for o in orders):
+        return list(orders)
+    return [*orders, order_of(game, "as in the earlier plan", moves)]
+
+
 class _Runner:
     """Plans one order after the other."""
 
     def __init__(
-        self, problem: Problem, seed: int, progress: Callable[[str], None]
+        self,
+        problem: Problem,
+        seed: int,
+        progress: Callable[[str], None],
+        halt: Halt | None,
+        earlier: Earlier | None,
     ) -> None:
         self.problem = problem
         self.seed = seed
         self.progress = progress
+        self.halt = halt
+        self.earlier = earlier
+        self.planned: dict[str, Tried] = {}
 
     def plan(self, order: Order, effort: Effort, *, is_needed: bool = False) -> Tried:
         """Plan an order; what goes wrong is its reason, or raised if it is needed."""
         old = self.problem
+        is_over = self.halt is not None and self.halt.is_due()
+        if is_over and not is_needed:
+            none = Tried(order, None, "not planned in the time allowed", effort)
+            return self.planned.get(order.name, none)
 
         def say(text: str) -> None:
             self.progress(f"cleanup {order.name}: {text}")
@@ -140,25 +192,37 @@ class _Runner:
                 goal=old.goal,
                 only=old.only,
             )
-            outcome = run(problem, effort=effort, seed=self.seed, progress=say)
+            outcome = run(
+                problem,
+                effort=effort,
+                seed=self.seed,
+                progress=say,
+                halt=self.halt,
+                earlier=self.earlier,
+            )
         except (NoPlan, OutOfTime, InputError) as error:
             if is_needed:
                 raise
             return Tried(order, None, " ".join(str(error).split()), effort)
-        return Tried(order, outcome, "", effort)
+        found = Tried(order, outcome, "", effort)
+        # More work that had to end early may have found less than little work did.
+        self.planned[order.name] = min(
+            (found, self.planned.get(order.name, found)), key=_rank
+        )
+        return self.planned[order.name]
 
 
-def _rank(tried: Tried) -> tuple[bool, bool, int, int]:
-    """Return the rank of an order: planned, fits, least error, least work done."""
+def _rank(tried: Tried) -> tuple[bool, bool, int, int, int]:
+    """Return the rank of an order: planned, fits, goal, error, least work done."""
     if tried.outcome is None:
-        return (True, True, 0, 0)
+        return (True, True, 0, 0, 0)
     figures = tried.outcome.judged.figures
     problem = tried.outcome.instance.problem
     cost = figures.costs.total
     if problem.goal == "estimate":
-        return (False, False, tried.outcome.judged.estimate, cost)
+        return (False, False, tried.outcome.judged.estimate, cost, 0)
     misses = overrun(figures, problem.budget) > 0
-    return (False, misses, cost, tried.order.computed)
+    return (False, misses, aim(figures, problem), cost, tried.order.computed)
 
 
 def _row(tried: Tried, problem: Problem) -> OrderRow:
@@ -191,7 +255,7 @@ def _values(
     graph: ValueGraph, best: Tried, tried: Sequence[Tried]
 ) -> tuple[ValueRow, ...]:
     rows = []
-    own = _rank(best)[2]
+    own = _rank(best)[3]
     for number, value in enumerate(graph.values):
         computed, dropped = _counts(graph, best.order, number)
         others = [

@@ -13,8 +13,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from placer.compiled import compiled, inner
-from placer.planner.halt import NEVER as NEVER_HALT
-from placer.planner.halt import Halt
+from placer.halt import NEVER as NEVER_HALT
+from placer.halt import Halt
 from placer.planner.stepdirect import Parts, bound_recipe
 from placer.planner.steptables import ENDLESS, NEVER
 

@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING, Any, cast
 import numpy as np
 
 from placer.device.model import Budget
-from placer.planner.halt import NEVER, Halt
+from placer.halt import NEVER, Halt
 from placer.planner.joint import Open, solve
 from placer.planner.placement import (
     Instance,

@@ -9,14 +9,16 @@ import pytest
 
 from placer.device.model import Budget
 from placer.device.read import find_device
+from placer.halt import Halt
 from placer.planner import bounds
 from placer.planner.anneal import anneal, flow_of, move, neighbours_of
 from placer.planner.decode import Taste, alternatives, decode
 from placer.planner.explain import reasons
 from placer.planner.judge import Judge
-from placer.planner.loop import WORK, _Engine, run
+from placer.planner.loop import WORK, outcome, run
 from placer.planner.placement import Instance, evaluate, make_instance
 from placer.planner.policies import allowed, everything_allowed
+from placer.planner.pool import Pool
 from placer.planner.region import narrowed
 from placer.planner.search import Amount, search
 from placer.planner.windows import improve
@@ -184,14 +186,13 @@ def test_a_bound_under_limits_says_nothing_about_a_plan_that_breaks_them() -> No
     instance = instance_of(1, "slate-16", 6, 4, Budget(longest_ns=1))
     recipes = everything_allowed(instance)
     placement = decode(instance, list(instance.usable[:6]), Taste(recipes))
-    judge = Judge(instance, seed=0)
-    engine = _Engine(instance, instance, judge, WORK["quick"], 0, lambda _: None)
-    engine.joint_bound = judge.estimate(placement) + 1
-    judged = judge.route(placement)
+    pool = Pool(instance, WORK["quick"], 0, Halt(), lambda _: None)
+    pool.joint_bound = pool.judge.estimate(placement) + 1
+    judged = pool.judge.route(placement)
     assert judged is not None
-    outcome = engine.outcome(judged, ())
-    assert outcome.least_by == bounds.ESTIMATE_RULE
-    assert outcome.least <= judged.estimate
+    found = outcome(pool, judged, ())
+    assert found.least_by == bounds.ESTIMATE_RULE
+    assert found.least <= judged.estimate
 
 
 def test_reasons_are_priced_where_the_plan_stands_in_planned_order() -> None:
