@@ -50,11 +50,12 @@ def solve(
     hint: Placement | None = None,
     workers: int = 1,
     halt: Halt = NEVER,
+    largest: int | None = None,
 ) -> Answer:
     """Solve the joint model within a deterministic amount of work.
 
     `work` is CP-SAT's deterministic time, or what the walk over all sites counts as
-    such.  A hint must be a valid placement; one that is inside the open choices and
+    such; a model of more than `largest` clauses is not built.  A hint must be a valid placement; one that is inside the open choices and
     within the limits is never answered by a dearer one.
 
     Raises
@@ -62,7 +63,8 @@ def solve(
     InternalError
         If the model is invalid, or a solution does not survive its re-costing.
     """
-    return _Solve(instance, choice, seed, workers, halt).run(work, hint)
+    most = LARGEST_MODEL if largest is None else min(largest, LARGEST_MODEL)
+    return _Solve(instance, choice, seed, workers, halt, most).run(work, hint)
 
 
 LARGEST_MODEL = 300_000
@@ -81,8 +83,10 @@ class _Solve:
         seed: int,
         workers: int,
         halt: Halt,
+        largest: int,
     ) -> None:
         self.halt = halt
+        self.largest = largest
         self.instance = instance
         self.choice = choice
         self.seed = seed
@@ -97,7 +101,7 @@ class _Solve:
             self._take(hint)
         is_walked = self._walk(work)
         is_over = self._is_proven() or self.halt.is_due()
-        if is_over or size_of(self.instance, self.choice) > LARGEST_MODEL:
+        if is_over or size_of(self.instance, self.choice) > self.largest:
             return self._answer()
         joint = JointModel(self.instance, self.choice)
         start = self.placement or hint

@@ -128,6 +128,8 @@ def solve_joint(pool: Pool) -> None:
         seed=pool.seed,
         hint=hint,
         halt=pool.halt,
+        # Without any placement, a proof that there is none is worth a large model.
+        largest=None if hint is None else pool.work.joint_size,
     )
     if answer.status == "none":
         if hint is not None and not _has_hard_limits(pool.instance):
