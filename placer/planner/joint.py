@@ -55,8 +55,9 @@ def solve(
     """Solve the joint model within a deterministic amount of work.
 
     `work` is CP-SAT's deterministic time, or what the walk over all sites counts as
-    such; a model of more than `largest` clauses is not built.  A hint must be a valid placement; one that is inside the open choices and
-    within the limits is never answered by a dearer one.
+    such; a model of more than `largest` clauses is not built.  A hint must be a valid
+    placement; one that is inside the open choices and within the limits is never
+    answered by a dearer one.
 
     Raises
     ------
