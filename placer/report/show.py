@@ -9,6 +9,7 @@ from collections import Counter
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Protocol
 
+from placer.program.values import values_of
 from placer.report.words import WIDTH, Page, count, duration, listed, percent
 
 if TYPE_CHECKING:
@@ -280,8 +281,35 @@ def program_text(program: Program, *, width: int = WIDTH, colour: bool = False) 
         page.paragraph(
             f"{count(len(program.scopes), 'scope')} with compute, body, cleanup", 1
         )
+        _values(page, program)
     _idle_table(page, program)
     return page.text()
+
+
+def _values(page: Page, program: Program) -> None:
+    """List the values whose cleanup a plan decides, and what stays as written."""
+    graph = values_of(program)
+    if not graph.values:
+        page.paragraph("no scope makes values that can be kept or returned", 1)
+        return
+    page.heading("Values: when to clean them up is chosen with a device")
+    rows = []
+    for number, value in enumerate(graph.values):
+        below = [graph.values[i].name for i in value.inputs]
+        readers = sum(1 for use in graph.uses if number in use.needs)
+        readers += sum(1 for other in graph.values if number in other.inputs)
+        rows.append(
+            (
+                value.name,
+                str(value.line),
+                str(value.size),
+                str(readers),
+                listed(below, 4) if below else "-",
+                "" if value.is_plain else "has phases: not by measurement",
+            )
+        )
+    columns = ("value", "line", "wires", "readers", "<computed from", "<")
+    page.table(columns, rows, drop=(5, 4))
 
 
 def step_counts(program: Program) -> Counter[str]:
