@@ -4,13 +4,17 @@ from __future__ import annotations
 
 import json
 import random
+from collections.abc import Sequence
 
 import pytest
 
 import placer
+from placer.check.cleanup import follow_moves
 from placer.device.read import find_device
+from placer.planner.orders import game_of, orders_of
 from placer.program.planned import planned_program
 from placer.program.read import read_program
+from placer.program.values import values_of
 from placer.report.qasm import placed_qasm
 from tests.check.cleanup_sample import LADDER, reordered
 from tests.replay_reader import same_function
@@ -108,6 +112,38 @@ def test_random_scopes_plan_in_every_order(seed: int) -> None:
         assert plan.cleanup.asked == asked
         costs[asked] = plan.figures.costs.total
     assert costs["optimised"] == min(costs.values())
+
+
+def refuse(*finding: str) -> None:
+    raise AssertionError(finding)
+
+
+def measured(moves: Sequence[tuple[str, int]]) -> list[tuple[str, int]]:
+    """Return the moves with every cleaning that is followed by a computing measured."""
+    changed = []
+    for place, (action, number) in enumerate(moves):
+        if action == "uncompute" and ("compute", number) in moves[place:]:
+            changed.append(("drop", number))
+        else:
+            changed.append((action, number))
+    return changed
+
+
+def test_every_order_of_random_scopes_computes_the_same() -> None:
+    dropped = orders = 0
+    for seed in range(30):
+        program = read_program(scoped(seed), "scoped.yaml")
+        device = find_device("quartzite-20" if seed % 2 else "tuff-10")
+        graph = values_of(program)
+        game = game_of(program, graph, device)
+        for order in orders_of(program, game, graph, "quick")[0]:
+            moves = [(str(a), n) for a, n in order.moves] or list(graph.written)
+            for way in (moves, measured(moves)):
+                assert follow_moves(program, way, device, refuse)
+            orders += 1
+            dropped += measured(moves) != moves
+    assert orders > 60
+    assert dropped > 30
 
 
 def test_nothing_to_choose_says_nothing_about_cleanup() -> None:
