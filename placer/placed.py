@@ -255,6 +255,42 @@ def place(
     )
 
 
+def two_body_circuit(one: Ints, two: Ints, sites: int) -> PlacedCircuit:
+    """Return a circuit of nothing but gates between two tokens, for a trial route.
+
+    It belongs to one step and knows no wires: it can be routed, not priced.
+    """
+    count = len(one)
+    none = np.zeros(0, dtype=np.int64)
+    no = np.zeros(2 * count, dtype=np.bool_)
+    flat = _Template(
+        code=np.full(count, TWO, dtype=np.int64),
+        width=np.full(count, 2, dtype=np.int64),
+        cause=np.full(count, -1, dtype=np.int64),
+        local=np.stack([one, two], axis=1).ravel().astype(np.int64),
+        enters=no,
+        leaves=no,
+        needs=no,
+    )
+    return PlacedCircuit(
+        flow=_flow(flat, sites),
+        sites=sites,
+        steps=1,
+        wires=0,
+        step=np.zeros(count, dtype=np.int64),
+        holder=none,
+        gates=np.arange(count, dtype=np.int64),
+        leases=(),
+        is_value=no[:0],
+        home=none,
+        alive_after=no[:0],
+        valued_after=no[:0],
+        alive_before=no[:0],
+        fresh=none,
+        held=none,
+    )
+
+
 def _listen(
     problem: Problem,
     recipes: Sequence[Built],

@@ -74,7 +74,7 @@ def flow_of(instance: Instance, placement: Placement, move_scale: float) -> Flow
         alone[p, :] = 0.0
         alone[p, p] = -HARD
     prices = np.stack([_scaled(instance, mask, move_scale) for mask in masks])
-    return _rows(count, meetings, prices, alone)
+    return rows_of(count, meetings, prices, alone)
 
 
 def _ends(instance: Instance, placement: Placement) -> list[int]:
@@ -122,12 +122,13 @@ def _scaled(
     return np.where(price >= tables.far_cost, HARD / 1e3, scaled)
 
 
-def _rows(
+def rows_of(
     count: int,
     meetings: dict[tuple[int, int, int], int],
     prices: NDArray[np.float64],
     alone: NDArray[np.float64],
 ) -> Flow:
+    """Return meetings (token, token, kind of gate: how often) as adjacency rows."""
     rows: list[list[tuple[int, float, int, int]]] = [[] for _ in range(count)]
     for (a, b, kind), weight in sorted(meetings.items()):
         rows[a].append((b, float(weight), kind, 0))

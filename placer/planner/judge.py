@@ -14,7 +14,8 @@ import numpy as np
 from placer.errors import InternalError
 from placer.placed import place
 from placer.planner.placement import evaluate
-from placer.trial.router import RouteResult, Setting, route
+from placer.trial.backward import there_and_back
+from placer.trial.router import RouteResult, Setting, from_route, route
 from placer.trial.timeline import figures, timeline
 
 if TYPE_CHECKING:
@@ -113,6 +114,20 @@ class Judge:
             np.zeros(placed.steps, dtype=np.int64),
         )
         return self._judge(placement, placed, given)
+
+    def turned(self, judged: Judged, number: int) -> list[int] | None:
+        """Return the sites from which the tokens of a judged placement should start.
+
+        Found by routing the circuit back from where its route ends.
+        """
+        placed = self._place(judged.placement)
+        setting = SETTINGS[number % len(SETTINGS)]
+        there = from_route(judged.route, placed)
+        seed = self.seed * 1000 + 500 + number
+        to = there_and_back(
+            placed, self.route_tables, there, setting=setting, seed=seed
+        )
+        return None if to is None else to.tolist()
 
     def _follow(
         self, placement: Placement, setting: Setting, seed: int

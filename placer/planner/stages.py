@@ -13,9 +13,10 @@ import numpy as np
 
 from placer.errors import InternalError
 from placer.planner import bounds
+from placer.planner.anneal import move
 from placer.planner.joint import Open, everything, solve, tighten
 from placer.planner.judge import Judge
-from placer.planner.placement import Instance, make_instance
+from placer.planner.placement import Instance, Misfit, make_instance
 from placer.planner.policies import allowed
 from placer.planner.proof import can_prove
 from placer.planner.rank import in_the_spirit
@@ -227,18 +228,55 @@ def repair(pool: Pool) -> None:
 def polish(
     pool: Pool, policies: tuple[PolicyOutcome, ...]
 ) -> tuple[PolicyOutcome, ...]:
-    """Route the best few again with other seeds, policies too, fairly."""
+    """Route the best few again with other seeds and starts, policies too, fairly."""
     pool.say("routes: the best candidates again")
-    for judged in sorted(pool.judged, key=pool.key)[:3]:
+    firsts = sorted(pool.judged, key=pool.key)[:3]
+    for judged in firsts:
         route_again(pool, judged)
+    for number, judged in enumerate(firsts):
+        turn(pool, judged, f"there and back: {number + 1} of {len(firsts)}")
     return tuple(
         PolicyOutcome(
             p.policy,
             p.reason,
-            None if p.judged is None else route_again(pool, p.judged),
+            None if p.judged is None else _polished(pool, p.policy, p.judged),
         )
         for p in policies
     )
+
+
+def _polished(pool: Pool, policy: str, judged: Judged) -> Judged:
+    best = route_again(pool, judged)
+    return turn(pool, best, f"there and back: {policy} only")
+
+
+def turn(pool: Pool, judged: Judged, stage: str) -> Judged:
+    """Start where a way back from the end of the route leads to, again and again.
+
+    The way back looks at the first gates last, so it gathers what they need.  Returns
+    the best that was met.
+    """
+    best = current = judged
+    if pool.instance.problem.goal == "estimate":
+        return best
+    for number in range(pool.work.turns):
+        if pool.is_spent(current) or pool.is_over():
+            return best
+        pool.say(stage)
+        pool.gates_left -= pool.judge.gates(current.placement)
+        to = pool.judge.turned(current, number)
+        if to is None:
+            return best
+        try:
+            moved = move(pool.instance, current.placement, to)
+        except Misfit:
+            return best
+        found = pool.route(moved, number % max(1, pool.work.routes))
+        if found is None:
+            return best
+        current = found
+        best = min(best, found, key=pool.key)
+    return best
 
 
 def route_again(pool: Pool, judged: Judged) -> Judged:

@@ -22,7 +22,8 @@ class Work:
     have together (`repair_gates`: those of repairs), `routed` the candidates judged
     per search, `windows`, `flips`, `repairs` and `routes` (per final candidate) plain
     counts, `joint` CP-SAT's deterministic time, `joint_size` the largest joint model
-    (about its clauses), `embeds` the nodes of one search for a zero-swap placement.
+    (about its clauses), `embeds` the nodes of one search for a zero-swap placement,
+    `turns` the times that a final candidate is followed to its end and back.
     """
 
     search: Amount
@@ -38,6 +39,7 @@ class Work:
     joint_size: int
     routes: int
     embeds: int
+    turns: int
 
 
 WORK: dict[str, Work] = {
@@ -55,6 +57,7 @@ WORK: dict[str, Work] = {
         joint_size=60_000,
         routes=1,
         embeds=100_000,
+        turns=1,
     ),
     "normal": Work(
         search=Amount(5, 120_000, (1.0, 0.4, 2.5, 1.0, 0.4, 2.5)),
@@ -70,6 +73,7 @@ WORK: dict[str, Work] = {
         joint_size=250_000,
         routes=6,
         embeds=1_000_000,
+        turns=8,
     ),
     "deep": Work(
         search=Amount(8, 600_000, (1.0, 0.4, 2.5, 0.2)),
@@ -85,6 +89,7 @@ WORK: dict[str, Work] = {
         joint_size=3_000_000,
         routes=8,
         embeds=10_000_000,
+        turns=30,
     ),
 }
 
@@ -103,4 +108,5 @@ def warmed(work: Work) -> Work:
         joint_size=work.joint_size // 4,
         routes=max(1, work.routes // 2),
         embeds=0,
+        turns=work.turns // 4,
     )
