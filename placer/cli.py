@@ -54,6 +54,7 @@ if TYPE_CHECKING:
 
 WIDEST = 100
 INTERRUPTED = 130
+CHECKED = "checked: verified rule by rule from its own text before it was shown"
 _SCHEMAS = ("device", "program", "plan")
 
 
@@ -196,6 +197,12 @@ def _finite(
     help="Write OpenQASM 3 with the swaps of the included route.",
 )
 @click.option(
+    "--report",
+    "report_file",
+    metavar="FILE",
+    help="Write a report (HTML), and plan again for its curves.",
+)
+@click.option(
     "--gates",
     type=click.Choice(["toffoli", "clifford-t"]),
     default="toffoli",
@@ -217,6 +224,7 @@ def plan(
     plan_file: str | None,
     qasm_file: str | None,
     routed_file: str | None,
+    report_file: str | None,
     gates: str,
     as_json: bool,
     quiet: bool,
@@ -228,7 +236,7 @@ def plan(
     program.  A FILE of '-' is standard output.
     """
     halt = Halt(wall_limit)
-    files = (plan_file, qasm_file, routed_file)
+    files = (plan_file, qasm_file, routed_file, report_file)
     targets = [name for name in files if name is not None]
     _one_on_stdout(targets, as_json=as_json)
     check_targets(targets, (program, device))
@@ -262,6 +270,8 @@ def plan(
         from placer.report.routed import routed_qasm
 
         texts[routed_file] = routed_qasm(found, planned, chosen)
+    if report_file is not None:
+        texts[report_file] = _report_text(to_json(found))
     _put(texts, found, as_json=as_json, quiet=quiet)
     if not found.verdict.fits:
         _exit(NoPlan.exit_code)
@@ -271,7 +281,7 @@ def _put(texts: dict[str, str], found: Plan, *, as_json: bool, quiet: bool) -> N
     """Write the files, then print the one result that stdout is for."""
     from placer.report.text import plan_text
 
-    checked = "checked: verified rule by rule from its own text before it was shown"
+    checked = CHECKED
     on_stdout = to_json(found) if as_json else texts.pop(STDOUT, None)
     shown = plan_text(found, checked=checked, **_look(sys.stdout))
     write_all(texts)
@@ -283,11 +293,19 @@ def _put(texts: dict[str, str], found: Plan, *, as_json: bool, quiet: bool) -> N
         click.echo(plan_text(found, checked=checked), nl=False, err=True)
 
 
+def _report_text(plan_json: str) -> str:
+    """Return the report of a plan that has passed its check."""
+    # Loaded late: the charting library takes longer than most commands run.
+    from placer.report.html import report_html
+
+    return report_html(json.loads(plan_json))
+
+
 def _one_on_stdout(targets: Sequence[str], *, as_json: bool) -> None:
     if targets.count(STDOUT) + as_json > 1:
         raise click.UsageError(
             "standard output has room for one result: only one of --json, --plan -, "
-            "--qasm -, --routed - can use it"
+            "--qasm -, --routed -, --report - can use it"
         )
 
 
@@ -371,6 +389,12 @@ def check(plan_file: str, *, as_json: bool) -> None:
     "device_name",
     help="With --recipes: add time and least error on this device.",
 )
+@click.option(
+    "--report",
+    "report_file",
+    metavar="HTML",
+    help="Where FILE is a plan: write its report.",
+)
 @_json
 def show(
     name: str,
@@ -379,12 +403,13 @@ def show(
     recipes: bool,
     size: int,
     device_name: str | None,
+    report_file: str | None,
     as_json: bool,
 ) -> None:
-    """Show what a device or a program contains, or which recipes a call has.
+    """Show what a device, a program or a plan contains, or the recipes of a call.
 
-    FILE is a device or program file, or the name of a shipped device or demo program;
-    with --recipes it is a kind of call.
+    FILE is a device, program or plan file, or the name of a shipped device or demo
+    program; with --recipes it is a kind of call.
     """
     from placer.report import show as shown
 
@@ -395,8 +420,13 @@ def show(
         raise click.UsageError("Missing argument 'FILE'.")
     if device_name is not None:
         raise click.UsageError("'--device' goes with '--recipes'.")
-    is_device = sort_of(name) == "device"
-    if is_device:
+    sort = sort_of(name)
+    if sort == "plan":
+        _show_plan(name, report_file, as_json=as_json)
+        return
+    if report_file is not None:
+        raise click.UsageError("'--report' needs a plan file.")
+    if sort == "device":
         device = _load_device(name)
         if as_json:
             _print_json(shown.device_data(device))
@@ -408,6 +438,30 @@ def show(
         _print_json(shown.program_data(program))
     else:
         click.echo(shown.program_text(program, **_look(sys.stdout)), nl=False)
+
+
+def _show_plan(name: str, report_file: str | None, *, as_json: bool) -> None:
+    """Print a plan again, and write its report; one that fails its check gets none."""
+    from placer.check.verify import check_plan
+    from placer.planread import plan_of_data
+    from placer.report.show import check_text
+    from placer.report.text import plan_text
+
+    targets = [] if report_file is None else [report_file]
+    _one_on_stdout(targets, as_json=as_json)
+    check_targets(targets, (name,))
+    text = _read_text(name)
+    result = check_plan(text, name)
+    if not result.ok:
+        click.echo(check_text(result, name, **_look(sys.stderr)), nl=False, err=True)
+        _exit(CheckFailed.exit_code)
+    texts = {} if report_file is None else {report_file: _report_text(text)}
+    on_stdout = text if as_json else texts.pop(STDOUT, None)
+    write_all(texts)
+    if on_stdout is None:
+        shown = plan_of_data(json.loads(text))
+        on_stdout = plan_text(shown, checked=CHECKED, **_look(sys.stdout))
+    click.echo(on_stdout, nl=False)
 
 
 def _show_recipes(

@@ -239,6 +239,76 @@ class Cleanup:
 
 
 @dataclass(frozen=True, slots=True)
+class TradeRow:
+    """What planning again under one change gave; nothing is extrapolated.
+
+    `name` is the change in a few words, `how` says it exactly.  `limit` is the most
+    sites allowed, `None` where the change is another one.
+    """
+
+    name: str
+    how: str
+    limit: int | None
+    possible: bool
+    reason: str
+    fits: bool
+    figures: Figures | None
+
+
+@dataclass(frozen=True, slots=True)
+class Trade:
+    """What more or less workspace, and a better device, would bring.
+
+    All rows are planned with the same `effort`, so that they compare with each other.
+    `curve` has rising limits on the sites; the first of `changes` is the question as
+    it is.
+    """
+
+    effort: str
+    curve: tuple[TradeRow, ...]
+    changes: tuple[TradeRow, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Conflict:
+    """One limit of a conflict, and what a plan without it needs.
+
+    `name` is the limit (`share of lifetime`, `success`, `sites`, `run time`, `kinds of
+    workspace`), `words` how the user set it, `without` what was found when it was left
+    out and the others of the set were kept.
+    """
+
+    name: str
+    words: str
+    without: str
+    figures: Figures | None
+
+
+@dataclass(frozen=True, slots=True)
+class Nearest:
+    """A change under which a plan was found that fits."""
+
+    words: str
+    figures: Figures
+    effort: str
+
+
+@dataclass(frozen=True, slots=True)
+class WhyNot:
+    """The smallest set of limits that no plan was found to keep together.
+
+    `proven` is true when no plan can keep them, `by` says how that is known.
+    """
+
+    sentence: str
+    limits: tuple[Conflict, ...]
+    proven: bool
+    by: str
+    nearest: tuple[Nearest, ...]
+    effort: str
+
+
+@dataclass(frozen=True, slots=True)
 class Limit:
     """One limit of the budget against what the plan does, both in the unit named."""
 
@@ -295,6 +365,8 @@ class Plan:
     verdict: Verdict
     notes: tuple[str, ...] = ()
     cleanup: Cleanup | None = None
+    trade: Trade | None = None
+    whynot: WhyNot | None = None
 
     @property
     def calls(self) -> tuple[Step, ...]:
@@ -306,6 +378,13 @@ class Plan:
         """The sha256 of the plan's JSON text."""
         return hashlib.sha256(to_json(self).encode()).hexdigest()
 
+    def _repr_html_(self) -> str:
+        """Return what a notebook shows: the verdict, the map, the timeline."""
+        # A plan knows nothing of reports; only a notebook asks for this one.
+        from placer.report.notebook import picture
+
+        return picture(self)
+
 
 def to_json(plan: Plan) -> str:
     """Return the plan as JSON text, keys in a fixed order, ending in a newline."""
@@ -313,8 +392,9 @@ def to_json(plan: Plan) -> str:
     data["wires"] = dict(plan.wires)
     figures = data["figures"]
     figures["cost"] = plan.figures.costs.total
-    if plan.cleanup is None:
-        del data["cleanup"]
+    for section in ("cleanup", "trade", "whynot"):
+        if data[section] is None:
+            del data[section]
     bound = data["bound"]
     bound["gap"] = plan.bound.gap
     steps = data.pop("steps")

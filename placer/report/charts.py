@@ -30,7 +30,7 @@ WIDTH = 380
 _INCH = 72  # one point of the drawing is one unit of the page
 # Stand-ins for the page's colours, while the library draws: #0000nn for colour nn.
 _STAND_IN = {name: f"#0000{number + 16:02x}" for number, name in enumerate(PALETTE)}
-_STYLE: dict[str, Any] = {
+_STYLE: Any = {
     "svg.fonttype": "none",
     "svg.hashsalt": "placer",
     "font.size": 10,

@@ -26,6 +26,8 @@ _PITCH = ((40, 58.0), (160, 40.0), (600, 27.0))
 _SMALLEST_PITCH = 19.0
 _LEVELS = 4
 _DENSE = 3  # more links per site than this are drawn faintly
+_READABLE = 700.0  # least width of a map on a narrow screen, which then scrolls
+_ENLARGED = 1.5
 MOST_NAMED = 40  # sites; beyond that, names of wires stand in the table only
 
 
@@ -272,19 +274,21 @@ def _line(
     canvas: _Canvas, a: int, b: int, names: str, title: str, width: float | None
 ) -> None:
     (x, y), (u, v) = canvas.spots[a], canvas.spots[b]
-    style = "" if width is None else f' stroke-width="{_n(width)}"'
+    style = "" if width is None else f' style="stroke-width:{_n(width)}"'
     inner = f"<title>{escape(title)}</title>" if title else ""
     canvas.parts.append(
-        f'<path class="{names}" d="M{_n(x)} {_n(y)}L{_n(u)} {_n(v)}"{style}>{inner}</path>'
+        f'<path class="{names}" d="M{_n(x)} {_n(y)}L{_n(u)} {_n(v)}"{style}>'
+        f"{inner}</path>"
     )
 
 
 def _svg(canvas: _Canvas, name: str, label: str) -> str:
-    least = min(canvas.width, 700)
+    least = min(canvas.width, _READABLE)
+    wide = canvas.width * (_ENLARGED if len(canvas.spots) <= MOST_NAMED else 1.0)
     return (
         f'<svg id="{name}" class="map" role="img" aria-label="{escape(label)}" '
         f'viewBox="0 0 {_n(canvas.width)} {_n(canvas.height)}" '
-        f'style="--wide:{_n(canvas.width)}px;--least:{_n(least)}px">'
+        f'style="--wide:{_n(wide)}px;--least:{_n(least)}px">'
         f"{''.join(canvas.parts)}</svg>"
     )
 

@@ -103,7 +103,9 @@ def _sentence(text: str) -> str:
 
 def _choice_chart(choices: list[dict[str, Any]]) -> str:
     rows = [
-        charts.Bars(row["title"], tuple((n, nats(c)) for n, c in row["costs"]))
+        charts.Bars(
+            row["title"].split(" (")[0], tuple((n, nats(c)) for n, c in row["costs"])
+        )
         for row in choices
         if not row["reason"]
     ]

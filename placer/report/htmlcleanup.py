@@ -1,6 +1,6 @@
 """When values are cleaned up, as rows and a curve of a report.
 
-In: the facts of a plan.  Out: what the template shows, `None` for a plan without values.
+In: the facts of a plan.  Out: what the template shows; `None` without values.
 """
 
 from __future__ import annotations

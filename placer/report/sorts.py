@@ -1,4 +1,4 @@
-"""Tell a device from a program by name, by file name, or by the first keys."""
+"""Tell devices, programs and plans apart: by name, by file name, by the first keys."""
 
 from __future__ import annotations
 
@@ -9,7 +9,7 @@ from typing import Literal
 from placer.device.read import shipped_devices
 from placer.errors import InputError, Place, did_you_mean
 
-Sort = Literal["device", "program"]
+Sort = Literal["device", "program", "plan"]
 
 _DEVICE_KEY = re.compile(
     r"^(lattice|sites|links|capabilities|calibrated)\s*:", re.MULTILINE
@@ -26,7 +26,7 @@ def demo_programs() -> dict[str, Path]:
 
 
 def sort_of(name: str) -> Sort:
-    """Return whether a name or a file is a device or a program.
+    """Return whether a name or a file is a device, a program or a plan.
 
     Raises
     ------
@@ -53,12 +53,7 @@ def sort_of(name: str) -> Sort:
     if device:
         return "device"
     if text.lstrip().startswith("{"):
-        raise InputError.at(
-            Place(name),
-            "not-shown",
-            "this looks like a plan",
-            f"'placer check {name}' verifies a plan",
-        )
+        return "plan"
     raise InputError.at(
         Place(name),
         "neither",

@@ -18,7 +18,7 @@ from placer.problem import Problem
 from placer.program.planned import planned_program
 from placer.program.read import read_program
 from placer.report.qasm import placed_steps
-from placer.report.replay import NO_STEP, replay_route
+from placer.report.replay import replay_route
 from placer.tables import device_tables
 from placer.trial.router import from_route
 from placer.trial.timeline import timeline
@@ -221,9 +221,9 @@ def _fresh(
         for wire in step.operation.wires:
             first.setdefault(wire, index)
     home = placed.home.tolist()
-    for wire, index in sorted(first.items()):
-        if program.register_at(wire).start == "zero":
-            rows.append(Fresh(index, home[wire], prep[home[wire]]))
+    for at, index in sorted(first.items()):
+        if program.register_at(at).start == "zero":
+            rows.append(Fresh(index, home[at], prep[home[at]]))
     return tuple(rows)
 
 

@@ -129,7 +129,6 @@ def _calls(story: Story, scale: Scale) -> str:
         )
     bottom = TOP + count * (height + 2)
     return _svg(
-        story,
         scale,
         bottom,
         f"{_axis(scale, bottom)}{''.join(parts)}",
@@ -183,7 +182,7 @@ def _panel(
         "names wires, leases and lenders"
     )
     inner = f"{_axis(scale, bottom)}{''.join(names)}{paths}{''.join(labels)}"
-    return _svg(story, scale, bottom, inner, f"sites-{sites[0]}", label, sites)
+    return _svg(scale, bottom, inner, f"sites-{sites[0]}", label, sites)
 
 
 def _words(story: Story, stretch: Stretch) -> tuple[str, ...]:
@@ -201,19 +200,18 @@ def _words(story: Story, stretch: Stretch) -> tuple[str, ...]:
 def _axis(scale: Scale, bottom: float) -> str:
     unit, size = unit_of(scale.end)
     parts = []
-    for time in ticks(scale.end):
+    times = ticks(scale.end)
+    for time in times:
         x = scale.x(time)
-        text = f"{time / size:g}"
+        text = f"{time / size:g}" + (f" {unit}" if time == times[-1] else "")
         parts.append(
             f'<path class="tick" d="M{_n(x)} 12V{_n(bottom)}"/>'
             f'<text class="axis" x="{_n(x)}" y="9">{text}</text>'
         )
-    parts.append(f'<text class="unit" x="{_LEFT - 6}" y="9">{unit}</text>')
     return "".join(parts)
 
 
 def _svg(
-    story: Story,
     scale: Scale,
     bottom: float,
     inner: str,
@@ -232,8 +230,7 @@ def _svg(
 
 
 def rows_of(story: Story) -> dict[str, Any]:
-    """Return the stretches as plain data, by site: flat rows of start, end, state,
-    holder."""
+    """Return the stretches by site: flat rows of start, end, state and holder."""
     rows: dict[str, list[int]] = {}
     for stretch in sorted(story.replay.stretches):
         row = rows.setdefault(str(stretch.site), [])
