@@ -18,14 +18,20 @@ LARGEST = 62
 class Arrays(NamedTuple):
     """A game in arrays: per value its masks, costs and window; per position its needs.
 
-    `closure[v]` holds v and everything it is computed from; `later[k]` what targets
-    from k on need.  `drop[v]` is -1 where a value cannot be dropped.  `shut[k]` says
-    that a window ends with target k, so that passing it takes something away.
+    `order` lists the values so that each comes before what it is computed from;
+    `later[k]` is what targets from k on need, `waits[k]` what waiting for them costs
+    at least.  `least_compute` and `least_uncompute` are costs with the wait of the
+    value's own wires and its inputs'.  `drop[v]` is -1 where a value cannot be dropped.
+    `shut[k]` says that a window ends with target k, so that passing it takes something
+    away.
     """
 
     size: Any
     inputs: Any
-    closure: Any
+    order: Any
+    least_compute: Any
+    least_uncompute: Any
+    waits: Any
     compute: Any
     uncompute: Any
     time: Any
@@ -49,17 +55,11 @@ def arrays_of(game: Game) -> Arrays:
     values, targets = game.values, game.targets
     count, ends = len(values), len(targets)
     inputs = [sum(1 << i for i in v.inputs) for v in values]
-    closure = [0] * count
-
-    def close(v: int) -> int:
-        if not closure[v]:
-            closure[v] = 1 << v
-            for i in values[v].inputs:
-                closure[v] |= close(i)
-        return closure[v]
-
-    for v in range(count):
-        close(v)
+    moves = [least_wait(game, v) for v in range(count)]
+    waits = [0] * (ends + 1)
+    for k in range(ends - 1, -1, -1):
+        held_then = game.others + sum(values[v].size for v in set(targets[k].needs))
+        waits[k] = waits[k + 1] + game.hold * held_then * targets[k].time
     needs = [sum(1 << v for v in t.needs) for t in targets]
     later = [0] * (ends + 1)
     for k in range(ends - 1, -1, -1):
@@ -75,7 +75,12 @@ def arrays_of(game: Game) -> Arrays:
     return Arrays(
         size=row([v.size for v in values]),
         inputs=row(inputs),
-        closure=row(closure),
+        order=row(inputs_first(game)[::-1]),
+        least_compute=row([v.compute + w for v, w in zip(values, moves, strict=True)]),
+        least_uncompute=row(
+            [v.uncompute + w for v, w in zip(values, moves, strict=True)]
+        ),
+        waits=row(waits),
         compute=row([v.compute for v in values]),
         uncompute=row([v.uncompute for v in values]),
         time=row([v.time for v in values]),
@@ -95,36 +100,58 @@ def arrays_of(game: Game) -> Arrays:
     )
 
 
+def inputs_first(game: Game) -> list[int]:
+    """Return the values so that each comes after what it is computed from."""
+    order: list[int] = []
+    done: set[int] = set()
+    for root in range(len(game.values)):
+        waiting = [root]
+        while waiting:
+            v = waiting[-1]
+            missing = [i for i in game.values[v].inputs if i not in done]
+            waiting += missing
+            if not missing:
+                waiting.pop()
+                if v not in done:
+                    done.add(v)
+                    order.append(v)
+    return order
+
+
+def least_wait(game: Game, value: int) -> int:
+    """Return what waiting costs at least while a value is computed or uncomputed.
+
+    Its own wires and those of its inputs are held then, whatever else is.
+    """
+    row = game.values[value]
+    held_then = game.others + row.size + sum(game.values[i].size for i in row.inputs)
+    return game.hold * held_then * row.time
+
+
 @inner
 def to_go(game: Arrays, live: int, records: int, passed: int) -> int:
     """Return a cost that the way to the end cannot go below.
 
     What is there must be cleaned up from its inputs, so that these must be there too;
-    what is needed or has a record must be computed, and cleaned up again.
+    what is needed or has a record must be computed, and cleaned up again.  What is
+    there and may stay, as itself or as a record, asks nothing of its inputs.
     """
-    # What may end as a record need not be cleaned up.
-    wanted = live & ~game.kept & ~game.left
-    wanted |= records & ~game.left
-    wanted |= (game.later[passed] | game.kept) & ~live
-    count = len(game.size)
-    needed = 0
-    for v in range(count):
-        if wanted >> v & 1:
-            needed |= game.closure[v]
-    total = 0
-    for v in range(count):
-        if not needed >> v & 1:
+    stays = game.kept | game.left
+    needed = live & ~stays
+    needed |= records & ~game.left
+    needed |= (game.later[passed] | game.kept) & ~live
+    total: int = game.waits[passed]
+    for v in game.order:
+        bit = 1 << v
+        if needed & bit == 0 or live & stays & bit != 0:
             continue
-        is_kept = (game.kept | game.left) >> v & 1
-        if live >> v & 1:
-            if not is_kept:
-                total += game.uncompute[v]
-        else:
-            total += game.compute[v]
-            if not is_kept:
-                total += game.uncompute[v]
-            if records >> v & 1:
+        needed |= game.inputs[v]
+        if live & bit == 0:
+            total += game.least_compute[v]
+            if records & bit:
                 total += game.fix[v]
+        if stays & bit == 0:
+            total += game.least_uncompute[v]
     return total
 
 

@@ -11,6 +11,7 @@ import random
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
+from placer.planner.cleanup.arrays import inputs_first
 from placer.planner.cleanup.game import Answer, Move, replay
 
 if TYPE_CHECKING:
@@ -66,24 +67,6 @@ def _fixed(game: Game, *, is_eager: bool, by: str) -> Answer:
     return Answer(peak, moves, cost, None, False, by, peak)
 
 
-def _inputs_first(game: Game) -> list[int]:
-    """Return the values so that each comes after what it is computed from."""
-    order: list[int] = []
-    done: set[int] = set()
-    for root in range(len(game.values)):
-        waiting = [root]
-        while waiting:
-            v = waiting[-1]
-            missing = [i for i in game.values[v].inputs if i not in done]
-            waiting += missing
-            if not missing:
-                waiting.pop()
-                if v not in done:
-                    done.add(v)
-                    order.append(v)
-    return order
-
-
 @dataclass(slots=True)
 class _Run:
     """One run: what is there, what has been done, and how taste decides."""
@@ -107,7 +90,7 @@ class _Run:
         values = self.game.values
         below = [0] * len(values)
         self.depth = [0] * len(values)
-        for v in _inputs_first(self.game):
+        for v in inputs_first(self.game):
             below[v] = 1 << v
             for i in values[v].inputs:
                 below[v] |= below[i]

@@ -116,11 +116,13 @@ def graph(draw: random.Random, largest: int, seen: Counter[str]) -> Game:
         )
         for _ in range(targets)
     )
+    kept = draw.sample(range(count), draw.choice([0, 0, 1, min(2, count)]))
     for name, drawn in (
+        ("kept", any(values[v].inputs for v in kept)),
         ("measured", measured),
         ("windowed", windowed),
         ("several targets", targets > 1),
         ("waiting costs", hold > 0),
     ):
         seen[name] += drawn
-    return Game(tuple(values), rows, hold=hold)
+    return Game(tuple(values), rows, frozenset(kept), hold)

@@ -119,6 +119,7 @@ def test_generated_graphs_equal_brute_force() -> None:
             assert wanted >= least(game)
             seen["tight"] += wanted > (least_cost(game, high) or 0)
     for name in (
+        "kept",
         "measured",
         "windowed",
         "several targets",
@@ -127,6 +128,20 @@ def test_generated_graphs_equal_brute_force() -> None:
         "tight",
     ):
         assert seen[name] >= 10, (name, seen)
+
+
+def test_a_kept_value_asks_nothing_of_its_inputs_bug() -> None:
+    # Compute 0, 1, 2 (8 + 3 + 5), use; 1 and 2 stay, so 0 goes for good (3) and makes
+    # room for 3 (3), which is used and cleaned up from 2 alone (7): 29.
+    values = (
+        Value(1, (), 8, 3),
+        Value(1, (0,), 3, 1),
+        Value(1, (0, 1), 5, 7),
+        Value(1, (2,), 3, 7),
+    )
+    game = Game(values, (Target((2,)), Target((3,))), frozenset([1, 2]))
+    answer = solve(game, 3)
+    assert (answer.cost, answer.proven) == (29, True)
 
 
 @pytest.mark.parametrize("seed", range(4))
