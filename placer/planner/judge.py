@@ -103,7 +103,7 @@ class Judge:
         InternalError
             If the route breaks a rule of the device or of the circuit.
         """
-        placed = self._place(placement)
+        placed = self.placed(placement)
         if len(gaps) != len(placed.gates):
             raise InternalError("the route does not name every two-body gate once")
         pairs = np.array(swaps, dtype=np.int64).reshape(-1, 2)
@@ -120,7 +120,7 @@ class Judge:
 
         Found by routing the circuit back from where its route ends.
         """
-        placed = self._place(judged.placement)
+        placed = self.placed(judged.placement)
         setting = SETTINGS[number % len(SETTINGS)]
         there = from_route(judged.route, placed)
         seed = self.seed * 1000 + 500 + number
@@ -132,7 +132,7 @@ class Judge:
     def _follow(
         self, placement: Placement, setting: Setting, seed: int
     ) -> Judged | None:
-        placed = self._place(placement)
+        placed = self.placed(placement)
         found = route(placed, self.route_tables, setting=setting, seed=seed)
         return None if found is None else self._judge(placement, placed, found)
 
@@ -172,7 +172,8 @@ class Judge:
             for pair in self.instance.profiles[i][c].pairs
         )
 
-    def _place(self, placement: Placement) -> PlacedCircuit:
+    def placed(self, placement: Placement) -> PlacedCircuit:
+        """Return the placed circuit of a placement, the last one from memory."""
         if placement not in self._placed:
             lenders = evaluate(self.instance, placement).lenders
             order = sorted(
@@ -199,7 +200,7 @@ class Judge:
 
         Fewer routes are run when the work must end, none if it must end at once.
         """
-        placed = self._place(judged.placement)
+        placed = self.placed(judged.placement)
         counts = []
         for setting, seed in HELD_OUT:
             if halt.is_due():

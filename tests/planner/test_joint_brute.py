@@ -12,6 +12,7 @@ from typing import Any
 
 import pytest
 
+from placer.device.model import Budget
 from placer.planner import steptables
 from placer.planner.joint import everything, solve
 from placer.planner.loop import run
@@ -59,6 +60,19 @@ def compare(seed: int) -> None:
     assert walked(instance, least + 1) == (least, least), seed
     assert walked(instance, 3 * least + 2) == (least, least), seed
     record(instance, answer.placement)
+    if problem.budget != Budget():
+        SEEN["budget binds"] += binds(problem, least)
+
+
+def binds(problem: Problem, least: int) -> bool:
+    """Whether the least cost is lower without the budget's limits."""
+    free = dataclasses.replace(problem, budget=Budget())
+    instance = make_instance(free, device_tables(free.device))
+    answer = solve(instance, everything(instance), work=30.0, seed=0)
+    assert answer.status == "best"
+    assert answer.cost is not None
+    assert answer.cost <= least
+    return answer.cost < least
 
 
 def walked(instance: Any, beat: int) -> tuple[int | None, int]:
@@ -96,6 +110,9 @@ def record(instance: Any, placement: Any) -> None:
     SEEN["limited sites"] += instance.problem.budget.most_sites is not None
     SEEN["limited time"] += instance.problem.budget.longest_ns is not None
     device = instance.problem.device
+    is_uneven = len({link.error for link in device.links}) > 1
+    SEEN["level2, uneven"] += is_uneven and any(b.level2_wires for b in chosen)
+    SEEN["measured, uneven"] += is_uneven and any(b.needs_measurement for b in chosen)
     SEEN["uneven"] += len({link.error for link in device.links}) > 1
     SEEN["broken site"] += len(instance.usable) < len(device.sites)
     SEEN["priced T"] += device.t_gate is not None
@@ -134,6 +151,9 @@ def test_every_kind_of_problem_was_drawn() -> None:
         "shared slot",
         "limited sites",
         "limited time",
+        "budget binds",
+        "level2, uneven",
+        "measured, uneven",
         "uneven",
         "broken site",
         "priced T",
@@ -149,6 +169,22 @@ def test_every_kind_of_problem_was_drawn() -> None:
 def test_joint_equals_brute_force_on_more(block: int) -> None:
     for seed in range(1000 + block * BLOCK, 1000 + (block + 1) * BLOCK):
         compare(seed)
+
+
+@pytest.mark.slow
+def test_every_kind_of_problem_was_drawn_in_the_500() -> None:
+    if SEEN["cases"] + SEEN["no recipe"] < 25 * BLOCK:
+        pytest.skip("only meaningful after all blocks of slow cases")
+    assert SEEN["cases"] >= 400
+    for kind in (
+        "level2",
+        "measured",
+        "uneven",
+        "budget binds",
+        "lender",
+        "late start",
+    ):
+        assert SEEN[kind] >= 10, (kind, SEEN)
 
 
 @pytest.mark.parametrize("seed", range(40, 60))
