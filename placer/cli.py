@@ -14,7 +14,6 @@ import json
 import math
 import os
 import shlex
-import shutil
 import sys
 import traceback
 from pathlib import Path
@@ -22,6 +21,7 @@ from typing import TYPE_CHECKING, Any, NoReturn, cast
 
 import click
 
+from placer.cli_compare import compare
 from placer.errors import (
     CheckFailed,
     Fault,
@@ -40,7 +40,7 @@ from placer.program.planned import planned_program
 from placer.report.outputs import STDOUT, check_targets, write_all
 from placer.report.progress import Progress
 from placer.report.sorts import demo_programs, sort_of
-from placer.report.words import WIDTH
+from placer.report.words import look
 from placer.units import ticks_down
 from placer.version import VERSION
 
@@ -52,7 +52,6 @@ if TYPE_CHECKING:
     from placer.program.model import Program
     from placer.report.qasm import Gates
 
-WIDEST = 100
 INTERRUPTED = 130
 CHECKED = "checked: verified rule by rule from its own text before it was shown"
 _SCHEMAS = ("device", "program", "plan")
@@ -283,7 +282,7 @@ def _put(texts: dict[str, str], found: Plan, *, as_json: bool, quiet: bool) -> N
 
     checked = CHECKED
     on_stdout = to_json(found) if as_json else texts.pop(STDOUT, None)
-    shown = plan_text(found, checked=checked, **_look(sys.stdout))
+    shown = plan_text(found, checked=checked, **look(sys.stdout))
     write_all(texts)
     if on_stdout is None:
         click.echo(shown, nl=False)
@@ -358,7 +357,7 @@ def check(plan_file: str, *, as_json: bool) -> None:
     if as_json:
         _print_json(check_data(result, plan_file))
     else:
-        click.echo(check_text(result, plan_file, **_look(sys.stdout)), nl=False)
+        click.echo(check_text(result, plan_file, **look(sys.stdout)), nl=False)
     if not result.ok:
         _exit(CheckFailed.exit_code)
 
@@ -431,13 +430,13 @@ def show(
         if as_json:
             _print_json(shown.device_data(device))
         else:
-            click.echo(shown.device_text(device, **_look(sys.stdout)), nl=False)
+            click.echo(shown.device_text(device, **look(sys.stdout)), nl=False)
         return
     program = _load_program(name, open_inputs=open_inputs)
     if as_json:
         _print_json(shown.program_data(program))
     else:
-        click.echo(shown.program_text(program, **_look(sys.stdout)), nl=False)
+        click.echo(shown.program_text(program, **look(sys.stdout)), nl=False)
 
 
 def _show_plan(name: str, report_file: str | None, *, as_json: bool) -> None:
@@ -453,14 +452,14 @@ def _show_plan(name: str, report_file: str | None, *, as_json: bool) -> None:
     text = _read_text(name)
     result = check_plan(text, name)
     if not result.ok:
-        click.echo(check_text(result, name, **_look(sys.stderr)), nl=False, err=True)
+        click.echo(check_text(result, name, **look(sys.stderr)), nl=False, err=True)
         _exit(CheckFailed.exit_code)
     texts = {} if report_file is None else {report_file: _report_text(text)}
     on_stdout = text if as_json else texts.pop(STDOUT, None)
     write_all(texts)
     if on_stdout is None:
         shown = plan_of_data(json.loads(text))
-        on_stdout = plan_text(shown, checked=CHECKED, **_look(sys.stdout))
+        on_stdout = plan_text(shown, checked=CHECKED, **look(sys.stdout))
     click.echo(on_stdout, nl=False)
 
 
@@ -476,13 +475,13 @@ def _show_recipes(
             found = {name: list(names) for name, (_, names) in kinds(size).items()}
             _print_json({"kinds": found})
         else:
-            click.echo(kinds_text(size, **_look(sys.stdout)), nl=False)
+            click.echo(kinds_text(size, **look(sys.stdout)), nl=False)
         return
     device = None if device_name is None else _load_device(device_name)
     if as_json:
         _print_json({"kind": kind, "recipes": recipe_rows(kind, size, device)})
     else:
-        text = recipes_text(kind, size, device, **_look(sys.stdout))
+        text = recipes_text(kind, size, device, **look(sys.stdout))
         click.echo(text, nl=False)
 
 
@@ -544,14 +543,6 @@ def _print_json(data: dict[str, Any]) -> None:
     click.echo(json.dumps(data, indent=1, ensure_ascii=False))
 
 
-def _look(stream: Any) -> dict[str, Any]:
-    """Return width and colour: what the terminal has, or fixed when there is none."""
-    if not stream.isatty():
-        return {"width": WIDTH, "colour": False}
-    columns = shutil.get_terminal_size((WIDTH, 24)).columns
-    return {"width": min(columns, WIDEST), "colour": "NO_COLOR" not in os.environ}
-
-
 def _exit(status: int) -> NoReturn:
     click.get_current_context().exit(status)
 
@@ -585,6 +576,8 @@ def _bug_text(error: Exception) -> str:
         f"  PLACER_TRACE=1 {command}"
     )
 
+
+main.add_command(compare)
 
 if __name__ == "__main__":
     main()

@@ -84,8 +84,13 @@ def bars(
     label: str,
     unit: str,
     words: dict[str, str],
+    most: float | None = None,
 ) -> str:
-    """Return horizontal stacked bars; `words` names the colours in the legend."""
+    """Return horizontal stacked bars.
+
+    `words` names the colours in the legend, `most` is where the axis ends, for charts
+    that are to be compared.
+    """
     shown = [c for c in words if any(v > 0 for r in rows for k, v in r.parts if k == c)]
     lines = -(-len(shown) // 3)
     with mpl.rc_context(_STYLE):
@@ -109,6 +114,8 @@ def bars(
         axes.invert_yaxis()
         axes.grid(visible=False, axis="y")
         axes.set_xlabel(unit)
+        if most:
+            axes.set_xlim(0, 1.04 * most)
         _plain_ticks(axes, "x")
         if shown:
             figure.legend(

@@ -7,8 +7,10 @@ and never carries meaning of its own.
 from __future__ import annotations
 
 import io
+import os
+import shutil
 import textwrap
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from rich import box
 from rich.console import Console
@@ -20,6 +22,7 @@ if TYPE_CHECKING:
 
 WIDTH = 80
 NARROWEST = 40
+WIDEST = 100
 # A header, a rule of ASCII dashes, rows; nothing that a plain terminal cannot show.
 _RULED = box.Box("    \n    \n -- \n    \n    \n    \n    \n    \n", ascii=True)
 _GAP = 2
@@ -189,3 +192,11 @@ def listed(words: Sequence[str], most: int = 8) -> str:
     shown = ", ".join(words[:most])
     left = len(words) - most
     return f"{shown} and {left} more" if left > 0 else shown
+
+
+def look(stream: Any) -> dict[str, Any]:
+    """Return width and colour: what the terminal has, or fixed when there is none."""
+    if not stream.isatty():
+        return {"width": WIDTH, "colour": False}
+    columns = shutil.get_terminal_size((WIDTH, 24)).columns
+    return {"width": min(columns, WIDEST), "colour": "NO_COLOR" not in os.environ}
