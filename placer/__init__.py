@@ -14,7 +14,7 @@ from placer.errors import CheckFailed, InputError, InternalError, NoPlan, OutOfT
 
 # Modules that share a name with a function must be loaded before the function is
 # bound: importing them later would put the module in the function's place.
-from placer.plan import Plan, to_json
+from placer.plan import Plan, show_with, to_json
 from placer.version import VERSION
 
 __version__ = VERSION
@@ -30,6 +30,15 @@ __all__ = [
     "plan",
     "to_json",
 ]
+
+
+def _picture(plan: Plan) -> str:
+    from placer.report.notebook import picture
+
+    return picture(plan)
+
+
+show_with(_picture)
 
 if TYPE_CHECKING:
     from placer.api import check, plan

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import dataclasses
 import hashlib
+import html
 import json
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Literal
@@ -18,7 +19,7 @@ from placer.errors import InputError, Place
 from placer.program.model import CALL_KINDS
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Callable, Mapping
 
 FORMAT = 1
 Policy = Literal["clean", "borrowed", "level2", "none"]
@@ -380,10 +381,18 @@ class Plan:
 
     def _repr_html_(self) -> str:
         """Return what a notebook shows: the verdict, the map, the timeline."""
-        # A plan knows nothing of reports; only a notebook asks for this one.
-        from placer.report.notebook import picture
+        return _pictures[-1](self)
 
-        return picture(self)
+
+# A plan knows nothing of reports: who draws it is said from outside.
+_pictures: list[Callable[[Plan], str]] = [
+    lambda plan: f"<pre>{html.escape(plan.verdict.sentence)}</pre>"
+]
+
+
+def show_with(picture: Callable[[Plan], str]) -> None:
+    """Let notebooks show plans with a drawing of theirs."""
+    _pictures[:] = [picture]
 
 
 def to_json(plan: Plan) -> str:
