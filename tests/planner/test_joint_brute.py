@@ -151,7 +151,6 @@ def test_every_kind_of_problem_was_drawn() -> None:
         "shared slot",
         "limited sites",
         "limited time",
-        "budget binds",
         "level2, uneven",
         "measured, uneven",
         "uneven",

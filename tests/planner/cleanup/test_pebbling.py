@@ -13,7 +13,7 @@ from placer.planner.cleanup.exact import search
 from placer.planner.cleanup.game import Game, Move, Target, Value, replay
 from placer.planner.cleanup.greedy import at_end, at_once, descend
 from placer.planner.cleanup.windows import improve
-from tests.planner.cleanup.large import FAMILIES, SEEDS, SHARES, large
+from tests.planner.cleanup.generated import FAMILIES, SEEDS, SHARES, large
 from tests.planner.cleanup.reference import chain, graph, least_cost, tree
 
 # Fewest moves F(n, s) for chains of n values within s wires, the last one kept.
