@@ -60,19 +60,32 @@ def compare(seed: int) -> None:
     assert walked(instance, least + 1) == (least, least), seed
     assert walked(instance, 3 * least + 2) == (least, least), seed
     record(instance, answer.placement)
-    if problem.budget != Budget():
-        SEEN["budget binds"] += binds(problem, least)
 
 
-def binds(problem: Problem, least: int) -> bool:
-    """Whether the least cost is lower without the budget's limits."""
+def tighten(seed: int) -> None:
+    """Take away one ns and one site that the optimum needs, and solve again."""
+    problem = tiny_problem(seed)
+    if problem is None:
+        return
     free = dataclasses.replace(problem, budget=Budget())
     instance = make_instance(free, device_tables(free.device))
     answer = solve(instance, everything(instance), work=30.0, seed=0)
-    assert answer.status == "best"
-    assert answer.cost is not None
-    assert answer.cost <= least
-    return answer.cost < least
+    if answer.placement is None or answer.cost is None:
+        return
+    ends = evaluate(instance, answer.placement).ends
+    slots = (p for row in answer.placement.slot_sites for p in row)
+    sites = len({*answer.placement.sites, *slots})
+    for budget in (Budget(longest_ns=max(ends) - 1), Budget(most_sites=sites - 1)):
+        limited = dataclasses.replace(free, budget=budget)
+        _, other, (least, _) = solve_both(limited)
+        if least is None:
+            assert other.status == "none", (seed, budget)
+            SEEN["out of reach"] += 1
+            continue
+        assert other.status == "best", (seed, budget)
+        assert other.cost == least, (seed, budget)
+        assert least >= answer.cost, (seed, budget)
+        SEEN["budget binds"] += least > answer.cost
 
 
 def walked(instance: Any, beat: int) -> tuple[int | None, int]:
@@ -133,6 +146,12 @@ def test_joint_equals_brute_force(block: int) -> None:
         compare(seed)
 
 
+@pytest.mark.parametrize("block", range(3))
+def test_limits_that_bind_equal_brute_force(block: int) -> None:
+    for seed in range(block * BLOCK, (block + 1) * BLOCK):
+        tighten(seed)
+
+
 def test_every_kind_of_problem_was_drawn() -> None:
     if SEEN["cases"] + SEEN["no recipe"] < len(GATE):
         pytest.skip("only meaningful after all blocks")
@@ -151,6 +170,8 @@ def test_every_kind_of_problem_was_drawn() -> None:
         "shared slot",
         "limited sites",
         "limited time",
+        "budget binds",
+        "out of reach",
         "level2, uneven",
         "measured, uneven",
         "uneven",
@@ -168,6 +189,7 @@ def test_every_kind_of_problem_was_drawn() -> None:
 def test_joint_equals_brute_force_on_more(block: int) -> None:
     for seed in range(1000 + block * BLOCK, 1000 + (block + 1) * BLOCK):
         compare(seed)
+        tighten(seed)
 
 
 @pytest.mark.slow
