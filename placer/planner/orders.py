@@ -8,7 +8,7 @@ as written, all at once, all at the end, and points of the curve.
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, cast
+from typing import TYPE_CHECKING
 
 from placer.planner.cleanup import game as games
 from placer.planner.cleanup.curve import curve
@@ -16,16 +16,17 @@ from placer.planner.cleanup.greedy import at_end, at_once
 from placer.planner.profile import profile_of
 from placer.problem import choices_for
 from placer.program.inverse import undone
-from placer.program.rewrite import Action, Move
 from placer.tables import device_tables
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     from placer.device.model import Device
-    from placer.planner.cleanup.game import Answer, Effort, Game
+    from placer.planner.cleanup.game import Answer, Game
     from placer.planner.profile import Profile
+    from placer.planner.work import Effort
     from placer.program.model import Operation, Program
+    from placer.program.rewrite import Move
     from placer.program.values import ValueGraph
     from placer.tables import Tables
 
@@ -177,25 +178,22 @@ def orders_of(
     to do with each other, is not listed again.
     """
     answers = curve(game, effort)
-    written = tuple(graph.written)
-    orders = [Order(AS_WRITTEN, (), *_size(game, written))]
+    orders = [Order(AS_WRITTEN, (), *_size(game, graph.written))]
     touched = _touched(program, graph)
-    seen = {_normal(written, touched)}
+    seen = {_normal(graph.written, touched)}
     named = [(AT_ONCE, at_once(game)), (AT_END, at_end(game))]
     named += [(f"within {_wires(a.peak)}", a) for a in answers]
     for name, answer in named:
         if answer.moves is None:
             continue
-        moves = tuple((str(m.action), m.number) for m in answer.moves)
-        normal = _normal(moves, touched)
+        normal = _normal(answer.moves, touched)
         if normal in seen:
             continue
         seen.add(normal)
         taken = {order.name for order in orders}
         if name in taken:
             continue
-        own = tuple(Move(m.action, m.number) for m in answer.moves)
-        orders.append(Order(name, own, *_size(game, moves)))
+        orders.append(order_of(game, name, answer.moves))
     return orders, answers
 
 
@@ -222,32 +220,29 @@ def _touched(program: Program, graph: ValueGraph) -> Touched:
     return rows
 
 
-def _normal(
-    moves: Sequence[tuple[str, int]], touched: Touched
-) -> tuple[tuple[tuple[str, int], ...], ...]:
+def _normal(moves: Sequence[Move], touched: Touched) -> tuple[tuple[Move, ...], ...]:
     """Return the moves in layers: each as early as what it shares things with allows.
 
     Orders with the same layers give the same program.
     """
     layer_of: dict[object, int] = {}
-    layers: list[list[tuple[str, int]]] = []
-    for action, number in moves:
-        things = touched[action == "use", number]
+    layers: list[list[Move]] = []
+    for made in moves:
+        things = touched[made.action == "use", made.number]
         layer = max((layer_of.get(thing, 0) for thing in things), default=0)
         if layer == len(layers):
             layers.append([])
-        layers[layer].append((action, number))
+        layers[layer].append(made)
         layer_of.update(dict.fromkeys(things, layer + 1))
     return tuple(tuple(sorted(layer)) for layer in layers)
 
 
-def order_of(game: Game, name: str, moves: Sequence[tuple[str, int]]) -> Order:
+def order_of(game: Game, name: str, moves: Sequence[Move]) -> Order:
     """Return an order that is given by its moves."""
-    own = tuple(Move(cast("Action", action), number) for action, number in moves)
-    return Order(name, own, *_size(game, moves))
+    return Order(name, tuple(moves), *_size(game, moves))
 
 
-def _size(game: Game, moves: Sequence[tuple[str, int]]) -> tuple[int, int]:
+def _size(game: Game, moves: Sequence[Move]) -> tuple[int, int]:
     """Return the most wires that hold values at a time, and how many are computed."""
     held = most = computed = 0
     for action, number in moves:

@@ -24,7 +24,8 @@ from placer.planner.orders import (
 from placer.planner.rank import aim
 from placer.planner.verdict import overrun
 from placer.problem import make_problem
-from placer.program.planned import planned_program
+from placer.program.planned import moves_of, planned_program
+from placer.program.rewrite import Move
 from placer.program.values import values_of
 
 if TYPE_CHECKING:
@@ -39,7 +40,6 @@ if TYPE_CHECKING:
     from placer.program.values import ValueGraph
 
 Asked = Literal["as-written", "at-once", "at-end", "optimised"]
-ASKED: tuple[Asked, ...] = ("optimised", "as-written", "at-once", "at-end")
 COMPARED = (AS_WRITTEN, AT_ONCE, AT_END)
 AGAIN: dict[str, int] = {"quick": 0, "normal": 2, "deep": 4}
 
@@ -105,7 +105,7 @@ def settle(
     return best.outcome, Cleanup(
         asked=asked,
         chosen=best.order.name,
-        moves=tuple((str(a), n) for a, n in best.order.moves),
+        moves=best.order.moves,
         values=_values(graph, best, tried),
         rows=rows,
         curve=tuple(_point(a) for a in curve),
@@ -148,8 +148,8 @@ def _with_earlier(
         return list(orders)
     if [row["name"] for row in cleanup["values"]] != [v.name for v in graph.values]:
         return list(orders)
-    moves = tuple((str(action), int(number)) for action, number in cleanup["moves"])
-    if any(tuple((str(a), n) for a, n in o.moves) == moves for o in orders):
+    moves = moves_of(cleanup["moves"])
+    if any(order.moves == moves for order in orders):
         return list(orders)
     return [*orders, order_of(game, "as in the earlier plan", moves)]
 
@@ -247,8 +247,8 @@ def _point(answer: Answer) -> CurvePoint:
 
 def _counts(graph: ValueGraph, order: Order, value: int) -> tuple[int, int]:
     """Return how often a value is computed and dropped in an order."""
-    moves = [(str(a), n) for a, n in order.moves] or list(graph.written)
-    return moves.count(("compute", value)), moves.count(("drop", value))
+    moves = order.moves or graph.written
+    return moves.count(Move("compute", value)), moves.count(Move("drop", value))
 
 
 def _values(

@@ -29,6 +29,11 @@ def planned_program(
     return rewritten(
         program,
         values_of(program),
-        [Move(cast("Action", str(m[0])), int(m[1])) for m in moves],
+        moves_of(moves),
         has_reset=device.capabilities.reset,
     )
+
+
+def moves_of(rows: Sequence[Sequence[str | int]]) -> tuple[Move, ...]:
+    """Return the moves of a plan file, whose schema has been checked."""
+    return tuple(Move(cast("Action", str(row[0])), int(row[1])) for row in rows)

@@ -53,15 +53,12 @@ def rewritten(
 
 
 @dataclass(slots=True)
-class _Live:
-    """A computed value: the new wire of each of its places."""
-
-    wires: list[int]
-
-
-@dataclass(slots=True)
 class _Writer:
-    """Where the writing stands; new wires are numbered as they come."""
+    """Where the writing stands; new wires are numbered as they come.
+
+    `live` gives the new wire of each place of the values that are there, `records` the
+    bits of open records, `renumbered` the new number of wires of no value.
+    """
 
     source: Program
     graph: ValueGraph
@@ -70,10 +67,9 @@ class _Writer:
     names: list[str] = field(default_factory=list)
     renumbered: dict[int, int] = field(default_factory=dict)
     operations: list[Operation] = field(default_factory=list)
-    live: dict[int, _Live] = field(default_factory=dict)
+    live: dict[int, list[int]] = field(default_factory=dict)
     records: dict[int, list[str]] = field(default_factory=dict)
     bits: list[tuple[str, int]] = field(default_factory=list)
-    times: dict[int, int] = field(default_factory=dict)
     taken: set[str] = field(default_factory=set)
 
     def __post_init__(self) -> None:
@@ -120,7 +116,7 @@ class _Writer:
         """Write one move down."""
         if move.action == "use":
             for step in self.graph.uses[move.number].steps:
-                self._again(step, {}, is_undone=False)
+                self._again(step, is_value=False, is_undone=False)
             return
         value = self.graph.values[move.number]
         if move.action == "compute":
@@ -130,7 +126,7 @@ class _Writer:
         elif move.number not in self.live:
             raise InternalError(f"'{value.name}' is not there to clean up")
         elif move.action == "uncompute":
-            self._run(move.number, value, is_undone=True)
+            self._run(value, is_undone=True)
             del self.live[move.number]
         else:
             self._drop(move.number, value)
@@ -139,25 +135,23 @@ class _Writer:
         like = self.source.register_at(value.wires[0])
         name = self._fresh(value.name)
         wires = self._register(like, name, len(value.wires))
-        self.live[number] = _Live(wires)
-        self._run(number, value, is_undone=False)
-        for wire, bit in zip(self._holding(number), self._closed(number), strict=False):
-            self._add("gate", "z", wire, value, condition=bit)
-
-    def _closed(self, number: int) -> list[str]:
-        """Return the bits of the record that a new computing closes."""
-        return self.records.pop(number, [])
+        self.live[number] = wires
+        self._run(value, is_undone=False)
+        record = self.records.pop(number, None)
+        if record is not None:
+            for wire, bit in zip(self._holding(number), record, strict=True):
+                self._add("gate", "z", wire, value, condition=bit)
 
     def _holding(self, number: int) -> list[int]:
         value = self.graph.values[number]
-        wires = self.live[number].wires
+        wires = self.live[number]
         return [w for place, w in enumerate(wires) if place not in value.spare]
 
-    def _run(self, number: int, value: Value, *, is_undone: bool) -> None:
+    def _run(self, value: Value, *, is_undone: bool) -> None:
         for step in reversed(value.steps) if is_undone else value.steps:
-            self._again(step, {number: self.live[number]}, is_undone=is_undone)
+            self._again(step, is_value=True, is_undone=is_undone)
 
-    def _again(self, step: int, own: dict[int, _Live], *, is_undone: bool) -> None:
+    def _again(self, step: int, *, is_value: bool, is_undone: bool) -> None:
         """Write an operation of the source, or what undoes it, on the new wires."""
         operation = self.source.operations[step]
         wires = []
@@ -168,11 +162,10 @@ class _Writer:
                     wires.append(WireId(self.renumbered[wire]))
                 continue
             number, place = held
-            live = own.get(number) or self.live.get(number)
-            if live is None:
+            if number not in self.live:
                 name = self.graph.values[number].name
                 raise InternalError(f"step {step} reads '{name}', which is not there")
-            wires.append(WireId(live.wires[place]))
+            wires.append(WireId(self.live[number][place]))
         name, params = operation.name, operation.params
         inverse, signature = operation.inverse, operation.signature
         if is_undone:
@@ -189,7 +182,7 @@ class _Writer:
                 inverse=inverse,
                 signature=signature,
                 scope=-1,
-                part=("cleanup" if is_undone else "compute") if own else "",
+                part=("cleanup" if is_undone else "compute") if is_value else "",
             )
         )
 

@@ -15,6 +15,7 @@ from placer.program.claims import BRANCHING, DIAGONAL
 from placer.program.signature import changed
 
 if TYPE_CHECKING:
+    from placer.program.draft import Step
     from placer.program.model import Operation, Program
 
 Role = Literal["make", "use", "clean"]
@@ -51,7 +52,7 @@ def part_of(program: Program, operation: Operation, fixed: frozenset[int]) -> Pa
     return Part("use")
 
 
-def name_of(operation: Operation) -> str:
+def name_of(operation: Operation | Step) -> str:
     """Return the name of a gate, else the kind of a step."""
     return operation.name if operation.kind == "gate" else operation.kind
 
@@ -73,13 +74,16 @@ def has_phase(operation: Operation) -> bool:
     return name in DIAGONAL - {"id"} or name in ("y", "cy")
 
 
-def written(operation: Operation) -> tuple[int, ...]:
-    """Return the wires whose basis value an operation may change or disturb."""
+def written(operation: Operation | Step) -> tuple[int, ...]:
+    """Return the wires whose basis value an operation may change or disturb.
+
+    A measurement counts: it ends the superposition that a cleanup would need.
+    """
     if operation.signature is not None:
         return tuple(operation.wires[w] for w in changed(operation.signature))
     name = name_of(operation)
     if name == "barrier" or (name in DIAGONAL and name != "measure"):
         return ()
-    if name in ("swap", "rxx", "measure", "reset", "opaque"):
+    if name in ("swap", "rxx", "measure", "reset"):
         return operation.wires
     return operation.wires[-1:]

@@ -16,6 +16,7 @@ import networkx as nx
 
 from placer.program.claims import Replay
 from placer.program.making import Making, Makings, makings
+from placer.program.rewrite import Move
 from placer.program.roles import has_phase, written
 
 if TYPE_CHECKING:
@@ -66,13 +67,13 @@ class ValueGraph:
 
     `held[step]` maps each workspace wire that a step touches to the value it belongs
     to there, and its place among the wires of that value.  `written` is the program's
-    own order: (`compute`, `uncompute` or `use`, number).
+    own order.
     """
 
     values: tuple[Value, ...]
     uses: tuple[Use, ...]
     held: Mapping[int, Mapping[int, tuple[int, int]]]
-    written: tuple[tuple[str, int], ...] = ()
+    written: tuple[Move, ...] = ()
 
 
 def values_of(program: Program) -> ValueGraph:
@@ -123,9 +124,9 @@ def _written(
     value_of: Sequence[int],
     values: Sequence[Value],
     uses: Sequence[Use],
-) -> tuple[tuple[str, int], ...]:
+) -> tuple[Move, ...]:
     """Return the order of the source, each value there once at a time."""
-    moves: list[tuple[str, int]] = []
+    moves: list[Move] = []
     there: dict[int, int] = {}
     made = {making.steps[0]: value_of[n] for n, making in enumerate(found.makings)}
     first_of = {use.steps[0]: k for k, use in enumerate(uses)}
@@ -137,7 +138,7 @@ def _written(
     def compute(value: int) -> None:
         there[value] = there.get(value, 0) + 1
         if there[value] == 1:
-            moves.append(("compute", value))
+            moves.append(Move("compute", value))
 
     def clean(value: int) -> None:
         if there[value] > 1:
@@ -147,7 +148,7 @@ def _written(
         for i in again:
             compute(i)
         there[value] = 0
-        moves.append(("uncompute", value))
+        moves.append(Move("uncompute", value))
         for i in reversed(again):
             clean(i)
 
@@ -157,7 +158,7 @@ def _written(
         if index in made:
             compute(made[index])
         if index in first_of:
-            moves.append(("use", first_of[index]))
+            moves.append(Move("use", first_of[index]))
     return tuple(moves)
 
 

@@ -5,10 +5,9 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 
 from placer.errors import Fault
-from placer.program.claims import DIAGONAL
 from placer.program.draft import Draft, DraftScope, Part, Step
 from placer.program.inverse import undone
-from placer.program.signature import changed
+from placer.program.roles import written
 
 _SWAPPED: dict[Part, Part] = {
     "": "",
@@ -24,23 +23,6 @@ def inverse_step(step: Step) -> Step:
         step.kind, step.name, step.params, step.inverse, step.signature
     )
     return step._replace(name=name, params=params, inverse=inverse, signature=signature)
-
-
-def written(step: Step) -> tuple[int, ...]:
-    """Return the wires whose basis value a step may change."""
-    if step.is_frame:
-        return ()
-    if step.signature is not None:
-        return tuple(step.wires[w] for w in changed(step.signature))
-    name = step.name if step.kind == "gate" else step.kind
-    # A measurement ends the superposition that a cleanup would need.
-    if name == "measure":
-        return step.wires
-    if name in DIAGONAL:
-        return ()
-    if name in ("swap", "rxx"):
-        return step.wires
-    return step.wires[-1:]
 
 
 def mirror(
@@ -98,7 +80,7 @@ def body_faults(
                 needed.setdefault(wire, step)
     faults = []
     for step in body:
-        for wire in written(step):
+        for wire in () if step.is_frame else written(step):
             if wire in needed:
                 first = needed[wire]
                 faults.append(

@@ -16,7 +16,6 @@ if TYPE_CHECKING:
 
 MOST_VALUES = 8
 MOST_POINTS = 12
-_TREATMENT = {"once": "kept", "again": "returned", "measured": "measured"}
 
 
 def add_cleanup(page: Page, cleanup: Cleanup) -> None:
@@ -72,7 +71,7 @@ def _row(row: OrderRow, chosen: str) -> tuple[str, ...]:
 
 def _value(value: ValueRow) -> str:
     at = f" (line {value.line})" if value.line else ""
-    return f"{_TREATMENT[value.treatment]}: {value.name}{at}, {value.why}"
+    return f"{value.name}{at}: {value.why}"
 
 
 def _point(point: CurvePoint) -> str:

@@ -42,7 +42,6 @@ def refusal(body):
         "h a[0]; cx a[0], w[0]; cx w[0], t; cx a[0], w[0]; h a[0];",
         # The swap carries the value back.
         "cx a[0], w[0]; swap w[0], w[1]; cx a[0], w[1];",
-        # A reset discards whatever was there.
         # Two exact half turns.
         "rx(pi) w[0]; ry(-pi) w[0]; cy a[0], w[0]; cx a[0], w[0]; x w[1]; x w[1];",
         "crx(pi) a[0], w[0]; cx a[0], w[0]; U(0, 1, 2) w[0]; rx(2 * pi) w[0];",

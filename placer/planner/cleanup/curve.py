@@ -9,7 +9,8 @@ from placer.planner.cleanup import exact, greedy, windows
 from placer.planner.cleanup.game import Answer
 
 if TYPE_CHECKING:
-    from placer.planner.cleanup.game import Effort, Game
+    from placer.planner.cleanup.game import Game
+    from placer.planner.work import Effort
 
 PARTS = "every needed value computed and cleaned up once"
 

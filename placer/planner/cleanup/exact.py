@@ -13,10 +13,12 @@ import numpy as np
 
 from placer.compiled import compiled, inner
 from placer.planner.cleanup.arrays import LARGEST, Arrays, arrays_of, held, to_go
-from placer.planner.cleanup.game import Answer, Move, replay
+from placer.planner.cleanup.game import Answer, replay
+from placer.program.rewrite import Move
 
 if TYPE_CHECKING:
-    from placer.planner.cleanup.game import Action, Game
+    from placer.planner.cleanup.game import Game
+    from placer.program.rewrite import Action
 
 BY = "best-first search over all configurations"
 ACTIONS: tuple[Action, ...] = ("compute", "uncompute", "drop", "use")

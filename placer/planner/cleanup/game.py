@@ -9,17 +9,8 @@ end nothing is there but what is to be kept, and no record is open.  No solver h
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal, NamedTuple
 
-Action = Literal["compute", "uncompute", "drop", "use"]
-Effort = Literal["quick", "normal", "deep"]
-
-
-class Move(NamedTuple):
-    """One move: an action and the number of its value (for `use`: of its target)."""
-
-    action: Action
-    number: int
+from placer.program.rewrite import Move
 
 
 @dataclass(frozen=True, slots=True)

@@ -12,7 +12,8 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING
 
 from placer.planner.cleanup.arrays import inputs_first
-from placer.planner.cleanup.game import Answer, Move, replay
+from placer.planner.cleanup.game import Answer, replay
+from placer.program.rewrite import Move
 
 if TYPE_CHECKING:
     from collections.abc import Iterable

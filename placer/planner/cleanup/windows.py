@@ -10,7 +10,8 @@ from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from placer.planner.cleanup.exact import search
-from placer.planner.cleanup.game import Answer, Game, Move, Target, replay
+from placer.planner.cleanup.game import Answer, Game, Target, replay
+from placer.program.rewrite import Move
 
 if TYPE_CHECKING:
     from collections.abc import Sequence

@@ -10,9 +10,10 @@ import pytest
 
 from placer.planner.cleanup.curve import curve, fewest, least, solve
 from placer.planner.cleanup.exact import search
-from placer.planner.cleanup.game import Game, Move, Target, Value, replay
+from placer.planner.cleanup.game import Game, Target, Value, replay
 from placer.planner.cleanup.greedy import at_end, at_once, descend
 from placer.planner.cleanup.windows import improve
+from placer.program.rewrite import Move
 from tests.planner.cleanup.generated import FAMILIES, SEEDS, SHARES, large
 from tests.planner.cleanup.reference import chain, graph, least_cost, tree
 
