@@ -21,6 +21,7 @@ from placer.program.model import Operation, Program
 from placer.program.signature import (
     Signature,
     apply,
+    changed,
     digits,
     numbers,
     promised,
@@ -168,22 +169,23 @@ class Replay:
             self.refused.add(wire)
             name = self.program.wire_names[wire]
             writer = self._writer(operation.index, wire)
+            line = 0 if writer is None else writer.place.line
             self.faults.append(
                 Fault(
                     operation.place,
                     "reset-entangled",
                     f"the workspace wire {name} is reset while it may hold what line "
-                    f"{writer.place.line} has written{self._example(held)}: that "
+                    f"{line} has written{self._example(held)}: that "
                     "measures it, and disturbs what it was computed from",
                     "undo what the workspace holds before the reset, or drop the claim",
                 )
             )
         self.bits[wire] = np.zeros(_WORDS, dtype=np.uint64)
 
-    def _writer(self, index: int, wire: int) -> Operation:
-        """Return the last operation before another that acts on a wire."""
+    def _writer(self, index: int, wire: int) -> Operation | None:
+        """Return the last operation before another whose target is a wire."""
         earlier = self.program.operations[:index]
-        return next(op for op in reversed(earlier) if wire in op.wires)
+        return next((op for op in reversed(earlier) if wire in _targets(op)), None)
 
     def _all_ones(self, wires: Sequence[int]) -> Words:
         """Return where all wires are 1."""
@@ -242,6 +244,9 @@ class Replay:
                 if not operation.inverse
                 else f"taking back 'and' leaves {name} in 1"
             )
+            writer = self._writer(operation.index, target)
+            if writer is not None and writer.place.line:
+                what += f", as line {writer.place.line} has left it"
             self.faults.append(
                 Fault(
                     operation.place,
@@ -334,6 +339,12 @@ class Replay:
                 f"'{self.branched.name}' in line {self.branched.place.line}"
             )
         return text
+
+
+def _targets(operation: Operation) -> tuple[int, ...]:
+    if operation.signature is not None:
+        return tuple(operation.wires[w] for w in changed(operation.signature))
+    return operation.wires if operation.name == "swap" else operation.wires[-1:]
 
 
 def _all_inputs(count: int) -> list[Words]:

@@ -14,6 +14,7 @@ from dataclasses import dataclass, field
 from placer.errors import Fault, InputError, Place
 from placer.program.annotation import PAIRED, arguments_of, is_own, word_of
 from placer.program.draft import Draft, DraftScope, Part, Step
+from placer.program.roles import written
 from placer.program.syntax import Annotation
 from placer.program.yaml_scope import body_faults, inverse_step
 
@@ -34,13 +35,15 @@ class _Open:
 class Pairs:
     """The pairs of a program; `open` is a stack, the innermost last.
 
-    `scratch_of` returns the wires of a register that is named as scratch.
+    `scratch_of` returns the wires of a register that is named as scratch.  `cleaned`
+    says for scratch that nothing has been written to since where that was done.
     """
 
     draft: Draft
     scratch_of: Callable[[str, Place], Sequence[int]]
     open: list[_Open] = field(default_factory=list)
     names: dict[str, Place] = field(default_factory=dict)
+    cleaned: dict[int, Place] = field(default_factory=dict)
 
     def begin(self, notes: Sequence[Annotation]) -> _Open | None:
         """Open a pair, or come to the second statement of the innermost one.
@@ -109,22 +112,57 @@ class Pairs:
 
     def end(self, pair: _Open | None, first: int) -> list[Fault]:
         """Give new steps, from `first` on, their scope; close what is complete."""
+        steps = self.draft.steps
+        faults = self._read_after_cleanup(steps[first:])
         inner = self.open[-1] if self.open else None
         if inner is None:
-            return []
-        steps = self.draft.steps
+            return faults
         for place in range(first, len(steps)):
             if steps[place].scope < 0:
                 steps[place] = steps[place]._replace(
                     scope=inner.number, part=inner.part
                 )
         if pair is None:
-            return []
+            return faults
         if pair.part == "compute":
             pair.part = "body"
-            return []
+            return faults
         self.open.pop()
-        return self._faults(pair, steps[first:])
+        self._note_cleaned(steps[first:])
+        return faults + self._faults(pair, steps[first:])
+
+    def _note_cleaned(self, undoing: Sequence[Step]) -> None:
+        scratch = {
+            wire
+            for register in self.draft.registers
+            if register.is_workspace
+            for wire in range(register.first, register.first + register.width)
+        }
+        for step in undoing:
+            for wire in scratch.intersection(written(step)):
+                self.cleaned[wire] = step.place
+
+    def _read_after_cleanup(self, steps: Sequence[Step]) -> list[Fault]:
+        """Find steps that read scratch which a pair has cleaned up before."""
+        faults = []
+        for step in steps:
+            if step.kind == "barrier":
+                continue
+            new = written(step)
+            for wire in step.wires:
+                if wire in new:
+                    self.cleaned.pop(wire, None)
+                elif wire in self.cleaned:
+                    faults.append(
+                        Fault(
+                            step.place,
+                            "read-after-cleanup",
+                            f"'{step.name}' reads {self._names()[wire]}, which line "
+                            f"{self.cleaned.pop(wire).line} has cleaned up",
+                            "read it between the two halves of its pair",
+                        )
+                    )
+        return faults
 
     def _faults(self, pair: _Open, undoing: Sequence[Step]) -> list[Fault]:
         inside = [s for s in self.draft.steps if self._is_inside(s, pair.number)]

@@ -70,6 +70,7 @@ def test_pairs_nest_and_share_values() -> None:
         (COMPUTE + BODY, "the pair 'k1' is never ended"),
         (UNDO, "'@placer.uncompute id=k1' ends no pair that is open here"),
         (COMPUTE + BODY + UNDO.replace("inv @ ", ""), "step by step"),
+        (COMPUTE + BODY + UNDO + BODY, "reads w[1], which line 13 has cleaned up"),
         (COMPUTE + "x a[1];\n" + UNDO, "changes a[1], which the compute part uses"),
         (COMPUTE + BODY + UNDO + COMPUTE, "a pair 'k1' in line 10 already"),
         (COMPUTE.replace("scratch=w", "scratch=a"), "'a' is no workspace"),

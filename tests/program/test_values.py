@@ -202,3 +202,26 @@ def test_a_body_that_writes_what_the_compute_part_read_is_refused_with_both_line
     told = str(caught.value)
     assert "values.yaml:12" in told
     assert "line 10" in told
+
+
+def test_scratch_used_again_while_it_holds_something_names_both_lines() -> None:
+    text = """\
+registers:
+  a: {width: 3, start: unknown}
+  w: {width: 1, workspace: true}
+  t: {width: 1, start: zero}
+steps:
+  - mcx: {controls: [a.0, a.1], target: w.0}
+  - scope:
+      workspace: {v: 1}
+      compute:
+        - mcx: {controls: [a.1, a.2], target: v.0}
+        - and: {controls: [a.0, a.2], into: v.0}
+      body:
+        - cx: v[0], t[0]
+"""
+    with pytest.raises(InputError) as caught:
+        read_program(text, "again.yaml")
+    told = str(caught.value)
+    assert "again.yaml:11" in told
+    assert "as line 10 has left it" in told
